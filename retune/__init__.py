@@ -1,0 +1,1 @@
+"""Just-intonation targets for every note of a choral score."""

@@ -1,0 +1,1 @@
+"""Exporter plug-ins: bytes from tuned scores."""

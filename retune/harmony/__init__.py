@@ -1,0 +1,1 @@
+"""Slices, roots and qualities, non-chord tones."""

@@ -1,0 +1,1 @@
+"""The score as played: model, reading, spelling, playing order."""

@@ -1,0 +1,1 @@
+"""What a singer practises from."""

@@ -1,0 +1,1 @@
+"""Ratios, targets and tuned pitches."""
