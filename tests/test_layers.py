@@ -13,7 +13,7 @@ ROOT = Path(retune.__file__).parent
 
 # From the lowest row up. Files of one row may import each other only inside their own package.
 ROWS: tuple[tuple[str, ...], ...] = (
-    ("errors", "units"),
+    ("errors", "limits", "units"),
     ("pitch",),
     ("written",),
     ("adapters",),
