@@ -1,0 +1,158 @@
+"""The piece chord by chord as lines of text for a given width.
+
+A row is one chord: bar, beat, chord symbol, then for each part its pitch and cents (absolute,
+against equal temperament at the reference pitch; + is sharp), and the ratio where there is
+room. Non-chord tones stand in brackets, a dot repeats a note that is simply held on.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Sequence
+from dataclasses import dataclass
+
+import click
+
+from retune.harmony.model import Chord, Role
+from retune.harmony.symbols import chord_symbol
+from retune.tuning.model import Segment, TunedNote, TunedScore
+
+DOUBTFUL = 0.6
+"""Confidence below which a root is marked with a question mark (our choice)."""
+
+_BAR, _BEAT, _CHORD = 5, 7, 8
+_MARGIN = 1 + _BAR + _BEAT + _CHORD
+
+
+@dataclass(frozen=True, slots=True)
+class Cell:
+    """What one part sings in one chord."""
+
+    pitch: str
+    cents: str
+    ratio: str
+    chord_tone: bool
+
+
+@dataclass(frozen=True, slots=True)
+class Layout:
+    """How wide a part's cell is, what it shows, and how many fit side by side."""
+
+    cell: int
+    pitch: bool
+    ratio: bool
+    across: int
+
+
+def cents_text(cents: float) -> str:
+    """Whole cents with a sign; 0 without.
+
+    >>> [cents_text(c) for c in (-13.7, -0.2, 1.955)]
+    ['-14', '0', '+2']
+    """
+    whole = round(cents)
+    return f"{whole:+d}" if whole else "0"
+
+
+def layout_for(parts: int, columns: int) -> Layout:
+    """The fullest layout that fits: pitch, cents and ratio; pitch and cents; cents alone."""
+    room = columns - _MARGIN
+    for cell, pitch, ratio in ((16, True, True), (10, True, False), (6, False, False)):
+        if parts * cell <= room:
+            return Layout(cell, pitch, ratio, max(parts, 1))
+    return Layout(10, True, False, max(room // 10, 1))
+
+
+def cells_by_chord(tuned: TunedScore) -> list[dict[int, tuple[TunedNote, Segment]]]:
+    """For each chord, the note each part sings in it: its first chord tone, else its first."""
+    found: list[dict[int, tuple[TunedNote, Segment]]] = [{} for _ in tuned.harmony.chords]
+    for note in tuned.notes:
+        for segment in note.segments:
+            row, part = found[segment.chord], note.note.part
+            held = row.get(part)
+            better = held is not None and (
+                held[1].role is not Role.CHORD_TONE and segment.role is Role.CHORD_TONE
+            )
+            if held is None or better:
+                row[part] = (note, segment)
+    return found
+
+
+def _cell(note: TunedNote, segment: Segment) -> Cell:
+    ratio = segment.ratio
+    return Cell(
+        note.note.pitch.name,
+        cents_text(segment.cents),
+        f"{ratio.numerator}/{ratio.denominator}" if ratio else "",
+        segment.role is Role.CHORD_TONE,
+    )
+
+
+def _cell_text(cell: Cell | None, layout: Layout) -> str:
+    if cell is None:
+        return click.style(f"{'-':^{layout.cell - 2}}  ", dim=True)
+    text = f"{cell.pitch:<4}{cell.cents:>4}" if layout.pitch else f"{cell.cents:>4}"
+    if layout.ratio:
+        text += f" {cell.ratio:<5}"
+    if not cell.chord_tone:
+        text = f"({text.strip()})"
+    return click.style(f"{text:<{layout.cell}}", dim=not cell.chord_tone)
+
+
+def _short(name: str, room: int) -> str:
+    """A part's name in a room: cut words first, so that Tenor 2 stays Ten 2."""
+    if len(name) <= room:
+        return name
+    *words, last = name.split() or [""]
+    if words and last.isdigit():
+        return f"{' '.join(words)[: room - len(last) - 1].rstrip()} {last}"
+    return name[:room]
+
+
+def _heading(tuned: TunedScore, parts: Sequence[int], layout: Layout, first: bool) -> str:
+    left = f" {'bar':<{_BAR}}{'beat':<{_BEAT}}{'chord':<{_CHORD}}" if first else " " * _MARGIN
+    names = (f"{_short(tuned.score.parts[p].name, layout.cell - 2):<{layout.cell}}" for p in parts)
+    return click.style((left + "".join(names)).rstrip(), bold=True)
+
+
+def symbol_of(chord: Chord) -> str:
+    """The chord's symbol, with a question mark where its root is doubtful."""
+    symbol = chord_symbol(chord)
+    return f"{symbol}?" if symbol and chord.confidence < DOUBTFUL else symbol
+
+
+def table(tuned: TunedScore, columns: int, wanted: range | None = None) -> Iterator[str]:
+    """The chord table in lines no wider than `columns`.
+
+    `wanted` limits it to chords that begin in these bars, counted as played from 0.
+    """
+    score, parts = tuned.score, range(len(tuned.score.parts))
+    layout = layout_for(len(parts), columns)
+    groups = [parts[i : i + layout.across] for i in range(0, len(parts), layout.across)]
+    for index, group in enumerate(groups):
+        yield _heading(tuned, group, layout, index == 0)
+    shown_run = 1
+    for chord, row in zip(tuned.harmony.chords, cells_by_chord(tuned), strict=True):
+        bar = score.bar_at(chord.onset)
+        if chord.root is None or (wanted is not None and bar.index not in wanted):
+            continue
+        if bar.run != shown_run:
+            shown_run = bar.run
+            yield click.style(f" time {bar.run} through", dim=True)
+        beat = score.beat_at(chord.onset)
+        left = f" {bar.number:<{_BAR}}{beat_text(beat):<{_BEAT}}"
+        symbol = click.style(f"{symbol_of(chord):<{_CHORD}}", bold=True)
+        for index, group in enumerate(groups):
+            cells = "".join(_cell_text(_cell(*row[p]) if p in row else None, layout) for p in group)
+            yield (left + symbol if index == 0 else " " * _MARGIN) + cells.rstrip()
+
+
+def beat_text(beat: object) -> str:
+    """A beat as a musician writes it.
+
+    >>> from fractions import Fraction
+    >>> [beat_text(Fraction(n, 2)) for n in (2, 5)]
+    ['1', '2 1/2']
+    """
+    numerator, denominator = getattr(beat, "numerator", 1), getattr(beat, "denominator", 1)
+    whole, rest = divmod(numerator, denominator)
+    return f"{whole} {rest}/{denominator}" if rest else str(whole)

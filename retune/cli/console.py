@@ -1,0 +1,82 @@
+"""Talking to the user: messages go to standard error, data to standard output."""
+
+from __future__ import annotations
+
+import os
+import shutil
+import sys
+import textwrap
+from collections.abc import Iterator, Sequence
+from contextlib import contextmanager
+
+import click
+
+from retune.errors import Finding, Place, Weight
+
+_COLOURS = {Weight.NOTE: "cyan", Weight.DOUBT: "yellow", Weight.LOSS: "red"}
+MOST_FINDINGS = 12
+"""How many findings are listed unless all are asked for."""
+
+
+def width() -> int:
+    """Columns to write for: the terminal's, or COLUMNS, or 80 where there is none."""
+    return max(shutil.get_terminal_size((80, 24)).columns, 40)
+
+
+def colour_wanted(stream: object) -> bool:
+    """Whether a stream is a terminal that wants colour (NO_COLOR is honoured)."""
+    is_terminal = getattr(stream, "isatty", lambda: False)()
+    return bool(is_terminal) and not os.environ.get("NO_COLOR")
+
+
+def _wrapped(text: str, hanging: str) -> str:
+    return textwrap.fill(
+        text, width(), subsequent_indent=hanging, break_long_words=False, break_on_hyphens=False
+    )
+
+
+def _to_stderr(text: str) -> None:
+    click.echo(text, err=True, color=colour_wanted(sys.stderr))
+
+
+def print_error(what: str, where: Place | None = None, hint: str = "") -> None:
+    """An error: where it is, what it is, and on a line of its own what to do next."""
+    place = f"{where}: " if where and str(where) else ""
+    _to_stderr(click.style("Error: ", fg="red", bold=True) + _wrapped(place + what, "  "))
+    if hint:
+        _to_stderr(_wrapped(f"  {hint}.", "  "))
+
+
+def print_findings(findings: Sequence[Finding], everything: bool = False) -> None:
+    """The doubts, losses and inferences met on the way; notes only where all are asked for."""
+    shown = [f for f in findings if everything or f.weight is not Weight.NOTE]
+    limit = len(shown) if everything else MOST_FINDINGS
+    for finding in shown[:limit]:
+        label = click.style(f"{finding.weight}: ", fg=_COLOURS[finding.weight])
+        where = f"{place}: " if (place := _inside(finding.where)) else ""
+        _to_stderr("  " + label + _wrapped(where + finding.what, "    "))
+    hidden = len(findings) - min(len(shown), limit)
+    if hidden:
+        _to_stderr(f"  {hidden} more remark{'s' * (hidden > 1)} with --findings")
+
+
+def _inside(place: Place) -> str:
+    return str(Place(None, place.part, place.bar, place.beat))
+
+
+def say(text: str) -> None:
+    """A plain message."""
+    _to_stderr(text)
+
+
+@contextmanager
+def working(what: str, quiet: bool) -> Iterator[None]:
+    """Show on a terminal what is being done, and wipe it away afterwards."""
+    live = not quiet and sys.stderr.isatty()
+    if live:
+        click.echo(f"\r{what} …", err=True, nl=False)
+    try:
+        yield
+    finally:
+        if live:
+            click.echo("\r" + " " * (len(what) + 2) + "\r", err=True, nl=False)

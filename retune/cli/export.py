@@ -1,0 +1,97 @@
+"""`retune export`: chosen outputs only."""
+
+from __future__ import annotations
+
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+import click
+
+from retune.cli.console import working
+from retune.cli.options import (
+    examples,
+    grouped,
+    score_argument,
+    settings_option,
+    source_of,
+    talk_options,
+    tuning_options,
+)
+from retune.cli.report import report_findings, report_written
+from retune.errors import WishError
+
+if TYPE_CHECKING:
+    from retune.score.options import ReadOptions
+    from retune.tuning.policy import Policy
+
+
+@click.command(
+    "export",
+    short_help="Chosen outputs only.",
+    epilog=examples(
+        "retune export hymn.musicxml --to midi -o out",
+        "retune export hymn.musicxml --to scala --set scala.tables=4 -o tables",
+        "retune export song.mid --to notes --prime-limit 7 -o out",
+        "retune export hymn.musicxml --to midi -o - > hymn-just.mid",
+    ),
+)
+@score_argument
+@click.option(
+    "--to",
+    "exporters",
+    multiple=True,
+    required=True,
+    metavar="NAME",
+    help="Which output; may be repeated.",
+)
+@click.option(
+    "-o",
+    "--output",
+    required=True,
+    metavar="FOLDER",
+    help="Folder to write to, or - for one file to standard output.",
+)
+@settings_option
+@tuning_options
+@talk_options
+def command(
+    score: Path,
+    exporters: tuple[str, ...],
+    output: str,
+    settings: tuple[tuple[str, str, str], ...],
+    policy: Policy,
+    reading: ReadOptions,
+    all_findings: bool,
+    quiet: bool,
+) -> None:
+    """Write chosen outputs of one SCORE."""
+    from retune import pipeline
+
+    wishes = grouped(settings)
+    if unused := set(wishes) - set(exporters):
+        raise click.UsageError(
+            f"--set speaks of {', '.join(sorted(unused))}, which --to leaves out"
+        )
+    chosen = tuple(dict.fromkeys(exporters))
+    pipeline.check_wishes(chosen, wishes)
+    source, name = source_of(score)
+    with working(f"Tuning {name}", quiet):
+        tuned = pipeline.retuned(source, name, reading, policy)
+    if output == "-":
+        files = pipeline.exported(pipeline.takes_of(tuned), chosen, wishes)
+        if len(files) != 1:
+            raise WishError(
+                f"standard output takes one file, and this makes {len(files)}",
+                hint="Choose one output with a single file, such as --to midi, or give a folder",
+            )
+        stdout = click.get_binary_stream("stdout")
+        stdout.write(files[0].data)
+        stdout.flush()
+        report = None
+    else:
+        with working("Writing", quiet):
+            report = pipeline.write(tuned, chosen, output, wishes)
+    if not quiet:
+        report_findings(tuned, all_findings)
+        if report is not None:
+            report_written(report)
