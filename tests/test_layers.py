@@ -24,6 +24,7 @@ ROWS: tuple[tuple[str, ...], ...] = (
     ("export",),
     ("pipeline",),
     ("cli",),
+    ("__main__",),
 )
 LEVEL = {name: level for level, row in enumerate(ROWS) for name in row}
 
