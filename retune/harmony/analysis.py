@@ -1,0 +1,42 @@
+"""Score to harmony, on one page."""
+
+from __future__ import annotations
+
+from retune.harmony.chords import make_chords
+from retune.harmony.evidence import gather_evidence
+from retune.harmony.model import Harmony
+from retune.harmony.nonchord import find_roles
+from retune.harmony.segment import segment
+from retune.harmony.timeline import make_slices, make_timeline
+from retune.harmony.tonic import find_tonic
+from retune.harmony.weights import default_weights
+from retune.pitch import PitchClass
+from retune.score.model import Score
+
+
+def analyse(score: Score, tonic: PitchClass | None = None) -> Harmony:
+    """Find the local root, quality and non-chord tones of a whole score.
+
+    Parameters
+    ----------
+    score : Score
+        The piece as played; it may be silent or empty.
+    tonic : PitchClass, optional
+        The home tonic where it is known; found otherwise.
+
+    Returns
+    -------
+    Harmony
+        Slices and chords covering the piece without gaps, a fragment for every chord that each
+        note sounds in, and the home tonic.
+    """
+    timeline = make_timeline(score)
+    slices = make_slices(score, timeline)
+    evidence = gather_evidence(score, timeline)
+    chords = make_chords(score, slices, evidence, segment(evidence, default_weights()))
+    return Harmony(
+        slices=slices,
+        chords=chords,
+        fragments=find_roles(score, timeline, chords),
+        tonic=find_tonic(score, evidence, chords, tonic),
+    )

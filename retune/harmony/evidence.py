@@ -1,0 +1,122 @@
+"""What the segmentation weighs: counts of tones, basses, accents, per slice.
+
+Conventions
+-----------
+* Pitch classes run along axes of length 12, C = 0.
+* Durations are quarter notes; `held` adds up over voices, so a doubled tone counts twice.
+* A slice where nothing sounds has bass -1 and attack 0.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from retune.harmony.fragments import cut_notes
+from retune.harmony.metre import TOLERANCE, grid_points, metric_levels
+from retune.harmony.states import ROOTS, Floats, Ints
+from retune.harmony.timeline import Timeline
+from retune.score.model import Score
+
+
+@dataclass(frozen=True)
+class Evidence:
+    """Everything the score of a segment is made from.
+
+    Parameters
+    ----------
+    time : float64 array, shape (n + 1,)
+        Slice boundaries in quarter notes.
+    level : int64 array, shape (n + 1,)
+        Metric level of the boundaries.
+    inner : int64 array, shape (n,)
+        Strongest level of a grid point strictly inside each slice, 0 without one.
+    attack : float64 array, shape (n,)
+        Share of the sounding notes that begin with the slice.
+    bass : int64 array, shape (n,)
+        Pitch class of the lowest note, -1 in silence.
+    held, begun : float64 arrays, shape (n, 12)
+        Quarter notes of sounding voices, and pieces that begin, by pitch class.
+    sounding : float64 array, shape (n, 12)
+        1 where a pitch class sounds.
+    cells, approaches : int64 arrays, shape (incidences,)
+        12 * slice + pitch class, and the approach, of every piece in every slice it touches.
+    beginning : int64 array
+        Places in `cells` of the incidences that begin a piece.
+    """
+
+    time: Floats
+    level: Ints
+    inner: Ints
+    attack: Floats
+    bass: Ints
+    held: Floats
+    begun: Floats
+    sounding: Floats
+    cells: Ints
+    approaches: Ints
+    beginning: Ints
+
+    @property
+    def count(self) -> int:
+        """Number of slices."""
+        return len(self.bass)
+
+    @property
+    def length(self) -> Floats:
+        """Length of each slice in quarter notes, shape (n,)."""
+        return np.diff(self.time)
+
+    def spread(self, cost_begin: Floats, cost_quarter: Floats) -> Floats:
+        """Costs per approach summed into slices and pitch classes, shape (n, 12)."""
+        begin = self.cells[self.beginning]
+        size = self.count * ROOTS
+        counted = np.bincount(begin, cost_begin[self.approaches[self.beginning]], size)
+        lengths = self.length[self.cells // ROOTS]
+        lasting = np.bincount(self.cells, cost_quarter[self.approaches] * lengths, size)
+        total = np.asarray(counted + lasting, dtype=np.float64)
+        return total.reshape(-1, ROOTS)
+
+
+def gather_evidence(score: Score, timeline: Timeline) -> Evidence:
+    """Count what sounds in every slice."""
+    count = timeline.count
+    keys = np.array([score.notes[i].pitch.key for i in timeline.notes.tolist()], dtype=np.int64)
+    pieces = cut_notes(score, timeline)
+    spans = pieces.last - pieces.first
+    piece = np.repeat(np.arange(len(spans)), spans)
+    begins = np.cumsum(spans) - spans
+    slices = pieces.first[piece] + np.arange(len(piece)) - begins[piece]
+    cells = slices * ROOTS + keys[pieces.note[piece]] % 12
+    voices = np.bincount(cells, minlength=count * ROOTS).reshape(-1, ROOTS).astype(np.float64)
+    begun = np.bincount(cells[begins], minlength=count * ROOTS).reshape(-1, ROOTS)
+    lowest = np.full(count, np.iinfo(np.int64).max)
+    np.minimum.at(lowest, slices, keys[pieces.note[piece]])
+    total = voices.sum(axis=1)
+    onsets = np.bincount(timeline.first, minlength=count)[:count]
+    return Evidence(
+        time=timeline.time,
+        level=timeline.level,
+        inner=_inner_levels(score, timeline),
+        attack=onsets / np.maximum(total, 1.0),
+        bass=np.where(total > 0, lowest % 12, -1),
+        held=voices * np.diff(timeline.time)[:, None],
+        begun=begun.astype(np.float64),
+        sounding=(voices > 0).astype(np.float64),
+        cells=cells,
+        approaches=pieces.approach[piece],
+        beginning=begins,
+    )
+
+
+def _inner_levels(score: Score, timeline: Timeline) -> Ints:
+    points = grid_points(score.bars, float(timeline.time[-1]))
+    strength = metric_levels(score.bars, points)
+    place = np.searchsorted(timeline.time, points + TOLERANCE, side="right") - 1
+    inside = (place >= 0) & (place < timeline.count)
+    points, strength, place = points[inside], strength[inside], place[inside]
+    proper = points - timeline.time[place] > TOLERANCE
+    inner = np.zeros(timeline.count, dtype=np.int64)
+    np.maximum.at(inner, place[proper], strength[proper])
+    return inner
