@@ -10,9 +10,8 @@ from retune.adapters.xml import Element
 from retune.errors import Weight
 from retune.score.musicxml.draft import BarDraft
 from retune.score.musicxml.transposition import interval
-from retune.score.musicxml.values import decimal, whole, words
+from retune.score.musicxml.values import MAX_STAVES, decimal, whole, words
 
-MAX_STAVES = 64
 _MOST_BEATS = 1024
 _MOST_FIFTHS = 14
 _MOST_CHROMATIC = 48
@@ -31,7 +30,7 @@ def read_attributes(element: Element, bar: BarDraft) -> None:
 def _watch_octaves(bar: BarDraft) -> None:
     """Remember staves that both a clef for low voices and a transposition put an octave down."""
     for staff, clef in bar.part.clefs.items():
-        if clef == "G8" and bar.part.transposition(staff).semitones <= -12:
+        if clef == "G8" and bar.part.transposition(staff).semitones == -12:
             bar.part.doubly_lowered.add(staff)
 
 
@@ -50,9 +49,11 @@ def _staves(element: Element, bar: BarDraft) -> None:
 
 
 def _key(element: Element, bar: BarDraft) -> None:
-    if (element.get("number") or "1") != "1":
-        return
     fifths = whole(element.findtext("fifths"), -_MOST_FIFTHS, _MOST_FIFTHS)
+    if (element.get("number") or "1") != "1":
+        if fifths != bar.part.key_fifths:
+            bar.remark(Weight.NOTE, "staves have keys of their own; that of the first is used")
+        return
     if fifths is None:
         bar.remark(Weight.LOSS, "a key signature that is no circle-of-fifths key is not used")
         return

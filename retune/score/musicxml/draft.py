@@ -60,6 +60,7 @@ class PartState:
     in_measure_repeat: bool = False
     doubly_lowered: set[int] = field(default_factory=set)
     pitches: dict[tuple[str | None, ...], PitchReading] = field(default_factory=dict)
+    shared_denominator: int = 1
     lengths: dict[str | None, Fraction | None] = field(default_factory=dict)
     fitting: dict[tuple[Fraction, str | None, int], bool] = field(default_factory=dict)
 
@@ -89,7 +90,10 @@ class Jump:
 
 @dataclass
 class BarDraft:
-    """One bar while it is read; times in quarter notes from its start."""
+    """One bar while it is read; times in quarter notes from its start.
+
+    `hidden` holds the identities of noteheads that are not printed.
+    """
 
     part: PartState
     index: int
@@ -100,7 +104,7 @@ class BarDraft:
     chord: Slot | None = None
     note_count: int = 0
     notes: list[WrittenNote] = field(default_factory=list)
-    hidden: list[int] = field(default_factory=list)
+    hidden: list[str] = field(default_factory=list)
     rests: list[WrittenRest] = field(default_factory=list)
     marks: list[Mark] = field(default_factory=list)
     jumps: list[Jump] = field(default_factory=list)

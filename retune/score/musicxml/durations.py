@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from fractions import Fraction
 
 from retune.adapters.xml import Element
@@ -12,10 +13,13 @@ from retune.score.musicxml.values import QUARTERS_OF_TYPE, decimal, dotted, whol
 Fields = dict[str, Element]
 
 _MOST_IN_TUPLET = 1000
+_FINEST_SHARED = 10**30
+_FINE = 100_800
+"""Parts of a quarter note that hold tuplets of 2 to 10 and sixty-fourths exactly."""
 
 
 def read_length(element: Element | None, bar: BarDraft) -> Fraction | None:
-    """Quarter notes in a <duration>; None where it is missing, unreadable or not above 0."""
+    """Quarter notes in a <duration>; None where it is missing, unreadable or below 0."""
     if element is None:
         return None
     text, part = element.text, bar.part
@@ -25,9 +29,21 @@ def read_length(element: Element | None, bar: BarDraft) -> Fraction | None:
         bar.remark(Weight.DOUBT, "no divisions are given; durations are read as quarter notes")
         part.divisions = Fraction(1)
     value = decimal(text)
-    length = None if value is None or value <= 0 else value / part.divisions
+    length = None if value is None or value < 0 else _kept_countable(value / part.divisions, bar)
     part.lengths[text] = length
     return length
+
+
+def _kept_countable(length: Fraction, bar: BarDraft) -> Fraction:
+    """The length itself, unless a file of endlessly fine lengths would make sums run wild."""
+    part = bar.part
+    shared = math.lcm(part.shared_denominator, length.denominator)
+    if shared <= _FINEST_SHARED:
+        part.shared_denominator = shared
+        return length
+    bar.remark(Weight.DOUBT, f"a duration is too fine to count; rounded to 1/{_FINE} quarter note")
+    part.shared_denominator = math.lcm(part.shared_denominator, _FINE)
+    return Fraction(round(length * _FINE), _FINE)
 
 
 def note_duration(element: Element, fields: Fields, bar: BarDraft) -> Fraction:
@@ -39,7 +55,7 @@ def note_duration(element: Element, fields: Fields, bar: BarDraft) -> Fraction:
     if "grace" in fields:
         return ZERO
     length = read_length(fields.get("duration"), bar)
-    if length is None:
+    if not length:
         return _without_duration(element, fields, bar)
     if "type" in fields and "rest" not in fields and not _fits(element, fields, length, bar.part):
         bar.remark(

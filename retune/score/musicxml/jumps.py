@@ -27,13 +27,13 @@ _SOUND = {
     "coda": MarkKind.CODA,
 }
 
-_ENDING = r"(?P<how>.*)"
-# Words, with dots and brackets taken away (common practice, no source).
+_ENDING = r"(?P<how>(?: (?:al|alla|ad|e|et|con|senza|sino|fin|to|then|and|without|no)\b.*)?)"
+# Words, with all but letters taken away (common practice, no source).
 _WORDS = (
-    (re.compile(rf"(?:d ?c|da capo)\b{_ENDING}"), MarkKind.DA_CAPO),
-    (re.compile(rf"(?:d ?s|dal segno|del segno)\b{_ENDING}"), MarkKind.DAL_SEGNO),
+    (re.compile(rf"(?:d ?c|da capo){_ENDING}"), MarkKind.DA_CAPO),
+    (re.compile(rf"(?:d ?s|dal segno|del segno){_ENDING}"), MarkKind.DAL_SEGNO),
     (re.compile(r"(?:to|al|alla) (?:the )?coda|alla ?coda"), MarkKind.TO_CODA),
-    (re.compile(r"(?:al )?fine"), MarkKind.FINE),
+    (re.compile(r"fine"), MarkKind.FINE),
     (re.compile(r"coda"), MarkKind.CODA),
     (re.compile(r"segno"), MarkKind.SEGNO),
 )
@@ -52,7 +52,7 @@ def jump_in_words(text: str) -> tuple[MarkKind, str | None] | None:
     """
     if len(text) > _LONGEST:
         return None
-    plain = " ".join(re.sub(r"[.,:;()\[\]]", " ", text).lower().split())
+    plain = " ".join(re.sub(r"[^\w]", " ", text).lower().split())
     for pattern, kind in _WORDS:
         match = pattern.fullmatch(plain)
         if match is not None:

@@ -89,13 +89,25 @@ def _by_part(root: Element) -> _Music:
 
 
 def _by_time(root: Element) -> _Music:
-    """Bars sorted into parts; the nth nameless part of a bar is one part throughout."""
-    bars: dict[str, list[BarSource]] = {}
-    for frame in root.iterchildren("measure"):
-        for index, body in enumerate(frame.iterchildren("part")):
-            name = (body.get("id") or "").strip() or f"#{index + 1}"
-            bars.setdefault(name, []).append(BarSource(frame, body))
-    return [(name, tuple(found)) for name, found in bars.items()]
+    """Bars sorted into parts; the nth nameless part of a bar is one part throughout.
+
+    A part that a bar leaves out has an empty bar there: the frame, which holds no music itself.
+    """
+    frames = [
+        (
+            frame,
+            {
+                (body.get("id") or "").strip() or f"#{index + 1}": body
+                for index, body in enumerate(frame.iterchildren("part"))
+            },
+        )
+        for frame in root.iterchildren("measure")
+    ]
+    names = dict.fromkeys(name for _, bodies in frames for name in bodies)
+    return [
+        (name, tuple(BarSource(frame, bodies.get(name, frame)) for frame, bodies in frames))
+        for name in names
+    ]
 
 
 def _headed(music: _Music, headings: list[Heading], log: Log) -> tuple[PartSource, ...]:

@@ -10,10 +10,9 @@ from retune.score.musicxml.draft import BarDraft, Slot
 from retune.score.musicxml.durations import Fields, note_duration
 from retune.score.musicxml.lyrics import read_lyrics
 from retune.score.musicxml.pitches import read_pitch
-from retune.score.musicxml.values import velocity, whole, words
+from retune.score.musicxml.values import MAX_STAVES, decimal, velocity, whole, words
 from retune.written import MarkKind, WrittenNote, WrittenRest
 
-MAX_STAVES = 64
 NO_MARKS: frozenset[str] = frozenset()
 
 # Signs on a note, by their MusicXML names.
@@ -27,6 +26,17 @@ ARTICULATIONS = {
     "detached-legato": ("tenuto", "staccato"),
     "breath-mark": ("breath",),
     "caesura": ("caesura",),
+}
+# Semitones that printed accidentals raise a note by; others are left to the pitch.
+ACCIDENTALS = {
+    "flat-flat": -2,
+    "flat": -1,
+    "natural-flat": -1,
+    "natural": 0,
+    "sharp": 1,
+    "natural-sharp": 1,
+    "double-sharp": 2,
+    "sharp-sharp": 2,
 }
 _TIED = {"start": ("start",), "stop": ("stop",), "continue": ("start", "stop")}
 # What is sung as written although the page or the playback data says otherwise.
@@ -57,8 +67,11 @@ def read_note(element: Element, bar: BarDraft) -> None:
         return
     if "rest" in fields:
         _read_rest(element, fields, slot, bar)
-    elif "unpitched" in fields or part.clefs.get(slot.staff) == "percussion":
+    elif "unpitched" in fields:
         part.unpitched += 1
+    elif part.clefs.get(slot.staff) == "percussion":
+        part.unpitched += 1
+        bar.remark(Weight.DOUBT, "a note on a percussion staff is read as unpitched", slot.onset)
     elif slot.duration > 0 or "grace" in fields:
         _read_notehead(element, fields, slot, source, bar)
 
@@ -107,8 +120,6 @@ def _read_notehead(
     tied = notations.tied
     if "tie" in fields:
         tied = frozenset(tie.get("type") or "" for tie in element.iterchildren("tie"))
-    if element.get("print-object") == "no":
-        bar.hidden.append(len(bar.notes))
     note = WrittenNote(
         slot.onset,
         slot.duration,
@@ -123,9 +134,10 @@ def _read_notehead(
         source=source,
         dynamic=velocity(element.get("dynamics")),
     )
-    bar.notes.append(note)
-    if reading.doubling:
-        bar.notes.append(_doubled(note, reading.doubling))
+    sounding = [note, _doubled(note, reading.doubling)] if reading.doubling else [note]
+    bar.notes += sounding
+    if element.get("print-object") == "no":
+        bar.hidden += [each.source for each in sounding]
 
 
 def _doubled(note: WrittenNote, octaves: int) -> WrittenNote:
@@ -138,10 +150,22 @@ def _remark_oddities(element: Element, fields: Fields, slot: Slot, bar: BarDraft
     """Notes that some readers would leave out or speak; they are sung here, and named."""
     if "notehead" in fields and words(fields["notehead"]) in _CROSSED:
         bar.remark(Weight.DOUBT, "a crossed notehead is read as sung", slot.onset)
+    if "accidental" in fields and not _fits_accidental(fields):
+        bar.remark(
+            Weight.DOUBT,
+            "a printed accidental and its pitch disagree; the pitch counts",
+            slot.onset,
+        )
     if element.get("time-only"):
         bar.remark(
             Weight.DOUBT, "a note meant for some passes of a repeat sounds in each", slot.onset
         )
+
+
+def _fits_accidental(fields: Fields) -> bool:
+    printed = ACCIDENTALS.get(words(fields["accidental"]))
+    given = decimal(fields["pitch"].findtext("alter") or "0")
+    return printed is None or given is None or given == printed
 
 
 def _read_notations(element: Element, slot: Slot, bar: BarDraft) -> Notations:

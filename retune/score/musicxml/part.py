@@ -3,15 +3,13 @@
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import replace
+from dataclasses import dataclass
 from fractions import Fraction
 from itertools import pairwise
-from statistics import mean
 from typing import TypeVar
 
 from retune.adapters.xml import Element
-from retune.errors import Place, Weight
-from retune.pitch import Pitch
+from retune.errors import Weight
 from retune.score.musicxml.attributes import read_attributes
 from retune.score.musicxml.barlines import read_barline
 from retune.score.musicxml.directions import read_direction, read_sound, settle_tempi
@@ -24,15 +22,20 @@ from retune.score.musicxml.jumps import settle_coda_signs, settle_jumps
 from retune.score.musicxml.layout import BarSource, PartSource
 from retune.score.musicxml.log import Log
 from retune.score.musicxml.notes import read_note
-from retune.written import WrittenBar, WrittenNote, WrittenPart
+from retune.written import WrittenBar, WrittenPart
 
 _Value = TypeVar("_Value")
 
-MIDDLE_OF_MENS_VOICES = 57
-"""A3: about the middle of tenor and bass together (common practice, no source)."""
+
+@dataclass(frozen=True, slots=True)
+class PartReading:
+    """A part, and its staves that both clef and transposition put an octave down."""
+
+    part: WrittenPart
+    doubly_lowered: frozenset[int]
 
 
-def read_part(source: PartSource, identities: Identities, log: Log) -> WrittenPart:
+def read_part(source: PartSource, identities: Identities, log: Log) -> PartReading:
     """Read one part of a score; parts must come in order, so that identities are steady."""
     part = PartState(source.heading, log, identities)
     bars: list[BarDraft] = []
@@ -41,9 +44,7 @@ def read_part(source: PartSource, identities: Identities, log: Log) -> WrittenPa
     for left, right in pairwise(bars):
         _hand_over(left, right)
     settle_coda_signs(bars)
-    for staff in sorted(part.doubly_lowered):
-        _settle_octave(staff, bars, part)
-    return _written(part, bars)
+    return PartReading(_written(part, bars), frozenset(part.doubly_lowered))
 
 
 def _read_bar(source: BarSource, index: int, part: PartState) -> BarDraft:
@@ -112,32 +113,6 @@ def _hand_over_signature(
         _, value = ours.pop()
         if not any(start == ZERO for start, _ in theirs):
             theirs.insert(0, (ZERO, value))
-
-
-def _settle_octave(staff: int, bars: list[BarDraft], part: PartState) -> None:
-    """Choose between two readings of a staff whose clef and transposition both lower it.
-
-    By the standard the transposition holds and the clef does not sound. Where that puts the
-    voice nearer to an octave too low than to the middle of men's voices, the file is taken to
-    mean one octave, once.
-    """
-    keys = [n.pitch.key for bar in bars for n in bar.notes if n.staff == staff and not n.grace]
-    if not keys:
-        return
-    too_low = mean(keys) < MIDDLE_OF_MENS_VOICES - 6
-    if too_low:
-        for bar in bars:
-            bar.notes = [_octave_up(note) if note.staff == staff else note for note in bar.notes]
-    reading = "without the transposition" if too_low else "with the transposition"
-    part.log.add(
-        Weight.DOUBT,
-        f"clef and transposition both lower staff {staff} by an octave; read {reading}",
-        Place(part=part.heading.name),
-    )
-
-
-def _octave_up(note: WrittenNote) -> WrittenNote:
-    return replace(note, pitch=Pitch(note.pitch.step, note.pitch.alter, note.pitch.octave + 1))
 
 
 def _written(part: PartState, bars: list[BarDraft]) -> WrittenPart:

@@ -7,9 +7,7 @@ from fractions import Fraction
 
 from retune.adapters.xml import Element
 from retune.score.musicxml.draft import ZERO, BarDraft
-from retune.score.musicxml.values import decimal, whole, words
-
-MAX_STAVES = 64
+from retune.score.musicxml.values import MAX_STAVES, decimal, whole, words
 
 
 @dataclass(frozen=True, slots=True)

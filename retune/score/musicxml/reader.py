@@ -12,14 +12,15 @@ from retune.limits import Limits
 from retune.score.musicxml.identity import Identities
 from retune.score.musicxml.layout import read_layout
 from retune.score.musicxml.log import Log
-from retune.score.musicxml.part import read_part
+from retune.score.musicxml.octaves import settle_octaves
+from retune.score.musicxml.part import PartReading, read_part
 from retune.score.musicxml.titles import (
     read_composer,
     read_lyricist,
     read_rights,
     read_title,
 )
-from retune.written import WrittenPart, WrittenScore
+from retune.written import WrittenScore
 
 
 def read_musicxml(data: bytes, limits: Limits) -> WrittenScore:
@@ -46,12 +47,12 @@ def read_musicxml(data: bytes, limits: Limits) -> WrittenScore:
 
 def _read_score(root: Element, log: Log, limits: Limits) -> WrittenScore:
     identities = Identities()
-    parts: list[WrittenPart] = []
+    readings: list[PartReading] = []
     count = 0
     for source in read_layout(root, log):
-        part = read_part(source, identities, log)
-        parts.append(part)
-        count += sum(len(bar.notes) for bar in part.bars)
+        reading = read_part(source, identities, log)
+        readings.append(reading)
+        count += sum(len(bar.notes) for bar in reading.part.bars)
         if count > limits.max_notes:
             raise LimitError(
                 f"the score has more than {limits.max_notes} notes",
@@ -63,7 +64,7 @@ def _read_score(root: Element, log: Log, limits: Limits) -> WrittenScore:
             hint="Check that the export holds the music, not only its layout",
         )
     return WrittenScore(
-        parts=tuple(parts),
+        parts=settle_octaves(readings, log),
         title=read_title(root),
         composer=read_composer(root),
         lyricist=read_lyricist(root),

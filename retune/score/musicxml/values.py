@@ -8,6 +8,10 @@ from functools import lru_cache
 
 from retune.adapters.xml import Element
 
+MAX_STAVES = 64
+MAX_TEXT = 1000
+"""Longest text that is kept of an element, in characters."""
+
 MAX_DIGITS = 24
 """Longest number that is looked at; longer ones are hostile or broken."""
 
@@ -63,7 +67,7 @@ def words(element: Element | None) -> str:
     """Text of an element with white space settled; "" for none."""
     if element is None or not element.text:
         return ""
-    return " ".join(element.text.split())
+    return " ".join(element.text.split())[:MAX_TEXT]
 
 
 def dotted(base: Fraction, dots: int) -> Fraction:
