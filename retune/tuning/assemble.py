@@ -1,0 +1,173 @@
+"""From tuned pieces to tuned notes: segments, ratios, roots, grace notes.
+
+Conventions
+-----------
+* Cents are deviations from equal temperament of each note's key; a chord's root cents are those
+  of its root's key.
+"""
+
+from __future__ import annotations
+
+from bisect import bisect_right
+from dataclasses import dataclass
+from fractions import Fraction
+
+import numpy as np
+
+from retune.harmony.model import Harmony, Role
+from retune.pitch import PitchClass
+from retune.score.model import Note, Score
+from retune.tuning.fixed import CentsOf
+from retune.tuning.intervals import Flags, Floats
+from retune.tuning.layout import Layout
+from retune.tuning.model import Segment, TunedNote
+from retune.tuning.ratios import just_intervals
+from retune.tuning.targets import Targets
+from retune.units import ratio_to_cents
+
+_EQUAL = 1e-6
+"""Cents; neighbouring pieces of one chord closer than this are one segment."""
+
+
+def root_cents(
+    layout: Layout, harmony: Harmony, targets: Targets, x: Floats, unsung: CentsOf
+) -> tuple[float | None, ...]:
+    """Tuned cents of each chord's root; None where nothing sounds.
+
+    The mean of the voices that sing it, else what the other chord tones say of it, else any
+    other part that sounds it, else its cents in `unsung`, the tuning of the surroundings.
+    """
+    count = len(harmony.chords)
+    found = np.full(count, np.nan)
+    sung = targets.tone & layout.tuned
+    for chosen in (sung & (layout.degree == 0), sung, layout.degree == 0):
+        mean = _chord_means(layout, chosen, x - targets.just, count)
+        found = np.where(np.isnan(found), mean, found)
+    return tuple(
+        None if chord.root is None else unsung(chord.root) if np.isnan(cents) else float(cents)
+        for chord, cents in zip(harmony.chords, found, strict=True)
+    )
+
+
+def _chord_means(layout: Layout, chosen: Flags, values: Floats, count: int) -> Floats:
+    """Mean of the chosen pieces' values in each chord by length; nan where there is none."""
+    weight = np.where(chosen, layout.length, 0.0)
+    total = np.bincount(layout.chord, weight, minlength=count)
+    summed = np.bincount(layout.chord, weight * values, minlength=count)
+    return np.divide(summed, total, out=np.full(count, np.nan), where=total > 0.0)
+
+
+@dataclass(frozen=True)
+class Assembler:
+    """Turns placed pieces into tuned notes.
+
+    `just` says whether ratios are told: not for a temperament.
+    """
+
+    score: Score
+    harmony: Harmony
+    layout: Layout
+    targets: Targets
+    x: Floats
+    roots: tuple[float | None, ...]
+    limit: int
+    just: bool
+
+    def notes(self, scale: CentsOf, unmoving: CentsOf) -> tuple[TunedNote, ...]:
+        """All notes, in the score's order.
+
+        `scale` tunes a grace note where no chord sounds, `unmoving` those of parts that cannot
+        move.
+        """
+        pieces: list[list[int]] = [[] for _ in self.score.notes]
+        for piece, note in enumerate(self.layout.note.tolist()):
+            pieces[note].append(piece)
+        onsets = [chord.onset for chord in self.harmony.chords]
+        return tuple(
+            TunedNote(
+                note, self._segments(note, own) or (self._grace(note, onsets, scale, unmoving),)
+            )
+            for note, own in zip(self.score.notes, pieces, strict=True)
+        )
+
+    def _segments(self, note: Note, pieces: list[int]) -> tuple[Segment, ...]:
+        """One segment for each run of pieces with one chord and one pitch."""
+        chords, cents = self.layout.chord, self.x
+        heads = [
+            piece
+            for before, piece in zip([-1, *pieces], pieces, strict=False)
+            if before < 0
+            or chords[before] != chords[piece]
+            or abs(cents[before] - cents[piece]) > _EQUAL
+        ]
+        slices, first = self.harmony.slices, self.layout.first
+        onsets = [note.onset, *(slices[first[piece]].onset for piece in heads[1:])]
+        ends = [*onsets[1:], note.end]
+        # Grace notes that follow may have taken the last pieces' time.
+        return tuple(
+            self._segment(piece, onset, min(end, note.end))
+            for piece, onset, end in zip(heads, onsets, ends, strict=True)
+            if onset < note.end
+        )
+
+    def _segment(self, piece: int, onset: Fraction, end: Fraction) -> Segment:
+        fragment = self.harmony.fragments[self.layout.fragment[piece]]
+        return Segment(
+            onset,
+            end - onset,
+            fragment.chord,
+            fragment.role,
+            self._ratio(piece),
+            float(self.x[piece]),
+        )
+
+    def _ratio(self, piece: int) -> Fraction | None:
+        layout, chord = self.layout, int(self.layout.chord[piece])
+        template, root = self.targets.templates[chord], self.roots[chord]
+        if not self.just or layout.lone[piece] or not layout.tuned[piece]:
+            return None
+        if template is None or template.ratios is None or root is None:
+            return None
+        if layout.degree[piece] >= 0:
+            return template.ratios[layout.degree[piece]]
+        spelled = int(layout.fifths[piece]) - self._root(chord).fifths
+        return _nearest_ratio(spelled, float(self.x[piece]) - root, self.limit)
+
+    def _root(self, chord: int) -> PitchClass:
+        root = self.harmony.chords[chord].root
+        assert root is not None
+        return root
+
+    def _grace(
+        self, note: Note, onsets: list[Fraction], scale: CentsOf, unmoving: CentsOf
+    ) -> Segment:
+        """A grace note, tuned to the chord it leads to."""
+        tuned = self.score.parts[note.part].tuned
+        chord = max(bisect_right(onsets, note.end) - 1, 0)
+        ratio, cents = None, (scale if tuned else unmoving)(note.pitch.pitch_class)
+        root = self.roots[chord] if self.roots else None
+        if root is not None and self.just and tuned:
+            ratio, cents = self._graced(chord, root, note.pitch.pitch_class)
+        return Segment(note.onset, note.duration, chord, Role.OTHER, ratio, cents)
+
+    def _graced(self, chord: int, root: float, pitch: PitchClass) -> tuple[Fraction | None, float]:
+        spelled = pitch.fifths - self._root(chord).fifths
+        template = self.targets.templates[chord]
+        if template is not None and spelled in template.spelled:
+            degree = template.spelled.index(spelled)
+            ratio = template.ratios[degree] if template.ratios else None
+            return ratio, root + template.cents[degree]
+        ratio = just_intervals(spelled, self.limit)[0]
+        return ratio, root + _off_equal(ratio, spelled)
+
+
+def _off_equal(ratio: Fraction, fifths: int) -> float:
+    """A ratio's distance from equal temperament, given its spelling; -600 to 600."""
+    return (ratio_to_cents(ratio) - 100.0 * (7 * fifths % 12) + 600.0) % 1200.0 - 600.0
+
+
+def _nearest_ratio(fifths: int, cents: float, limit: int) -> Fraction:
+    """The just size of a spelled interval nearest to its distance from equal temperament."""
+    return min(
+        just_intervals(fifths, limit), key=lambda ratio: abs(_off_equal(ratio, fifths) - cents)
+    )

@@ -1,0 +1,132 @@
+"""The rows of the solve: what every sounding pair, held note, step and anchor asks for.
+
+Conventions
+-----------
+* Rows refer to unknowns, one for each tuned piece, in piece order.
+* Weights as in `policies`; a slice counts by its length in quarter notes.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+
+import numpy as np
+
+from retune.tuning.intervals import (
+    CONSONANT,
+    Floats,
+    Ints,
+    consonances,
+    nearest,
+    steps,
+)
+from retune.tuning.layout import Layout
+from retune.tuning.policies import Weights
+from retune.tuning.solve import Rows
+from retune.tuning.targets import Targets
+
+_PAIRS_AT_ONCE = 400_000
+_WOLF = 1.0
+"""Cents from which a template's interval is a wolf of a consonance."""
+
+
+def between(links: Ints, weight: Floats, target: Floats) -> Rows:
+    """Rows for pairs of unknowns, shape (rows, 2): the right one seen from the left."""
+    return Rows(links[:, 0], links[:, 1], weight, target)
+
+
+def absolute(right: Ints, weight: Floats, target: Floats) -> Rows:
+    """Rows that ask for a place rather than a distance."""
+    return Rows(np.full(len(right), -1), right, weight, target)
+
+
+def sounding_pairs(layout: Layout) -> Iterator[tuple[Ints, Ints, Floats]]:
+    """Every two tuned pieces that sound together, slice by slice, with the slice's length."""
+    sung = layout.tuned[layout.cell_piece]
+    pieces, where = layout.cell_piece[sung], layout.cell_slice[sung]
+    begin = np.cumsum(layout.voices) - layout.voices
+    for voices in np.unique(layout.voices[layout.voices > 1]).tolist():
+        slices = np.flatnonzero(layout.voices == voices)
+        low, high = np.triu_indices(voices, 1)
+        stride = max(1, _PAIRS_AT_ONCE // len(low))
+        for some in np.array_split(slices, range(stride, len(slices), stride)):
+            chosen = begin[some, None]
+            yield (
+                pieces[chosen + low].ravel(),
+                pieces[chosen + high].ravel(),
+                layout.quarters[where[chosen + low]].ravel(),
+            )
+
+
+def chord_rows(
+    layout: Layout, targets: Targets, weights: Weights, limit: int
+) -> Iterator[tuple[Ints, Ints, Floats, Floats]]:
+    """Left piece, right piece, weight and target of everything that sounds together."""
+    for left, right, quarters in sounding_pairs(layout):
+        apart = (layout.key[right] - layout.key[left]) % 12
+        unison = apart == 0
+        consonant = CONSONANT[apart]
+        tones = targets.tone[left] & targets.tone[right]
+        just = targets.just[right] - targets.just[left]
+        placed = targets.place[right] - targets.place[left]
+        pure = nearest(consonances(limit), apart, np.where(tones, just, placed))
+        wolf = tones & consonant & (np.abs(pure - just) > _WOLF)
+        drawn = np.where(wolf, weights.pure_share * pure + (1 - weights.pure_share) * just, just)
+        other = np.where(consonant, pure, nearest(steps(limit), apart, placed))
+        full = np.where(consonant, 1.0, weights.dissonant) * np.where(
+            targets.triad[left] & consonant, weights.triad, 1.0
+        )
+        part = np.where(consonant, weights.other, weights.clash)
+        weight = np.where(tones, full, np.where(unison, 1.0, part))
+        target = np.where(unison, 0.0, np.where(tones, drawn, other))
+        yield left, right, weights.chord * quarters * weight, target
+
+
+def held_weights(layout: Layout, weights: Weights, lead: int | None) -> Floats:
+    """Weight of each held link."""
+    return np.where(layout.part[layout.held[:, 0]] == lead, weights.lead, 1.0) * weights.held
+
+
+def melodic_weights(layout: Layout, weights: Weights, lead: int | None) -> Floats:
+    """Weight of each melodic link: repeated notes, steps, the part kept smoothest."""
+    left, right = layout.melodic.T
+    repeated = layout.key[left] == layout.key[right]
+    alone = layout.lone[left] | layout.lone[right]
+    step = np.where(alone, weights.lone, 1.0) * weights.melodic
+    led = np.where(layout.part[left] == lead, weights.lead, 1.0)
+    weighed: Floats = led * np.where(repeated, weights.repeated, step)
+    return weighed
+
+
+def melodic_targets(layout: Layout, x: Floats, limit: int) -> Floats:
+    """The just size nearest to each melodic link as x stands; 0 for repeated notes."""
+    left, right = layout.melodic.T
+    distance = layout.key[right] - layout.key[left]
+    size = nearest(steps(limit), distance % 12, x[right] - x[left])
+    return np.where(distance == 0, 0.0, size)
+
+
+def anchor_weights(layout: Layout, targets: Targets, weights: Weights) -> Floats:
+    """How hard each piece is drawn to its place in the home scale."""
+    share = layout.quarters[layout.cell_slice] / np.maximum(layout.voices[layout.cell_slice], 1)
+    drawn = layout.per_piece(share) * weights.anchor
+    drawn[targets.home] *= weights.tonic
+    first = layout.chord == layout.chord[layout.tuned][:1]
+    drawn[first] += weights.start * layout.length[first]
+    return drawn
+
+
+def bridges(layout: Layout) -> Ints:
+    """Pairs of pieces across boundaries that no held or melodic link of the voices crosses."""
+    sung = np.flatnonzero(layout.tuned)
+    links = np.concatenate((layout.held, layout.melodic))
+    links = links[layout.tuned[links].all(axis=1)]
+    crossed = np.unique(layout.first[links[:, 1]])
+    # The lowest-numbered piece of each slice that sounds stands for all of it.
+    cells = layout.tuned[layout.cell_piece]
+    slices, index = np.unique(layout.cell_slice[cells], return_index=True)
+    pieces = layout.cell_piece[cells][index]
+    fresh = ~np.isin(slices, crossed) & (layout.first[pieces] == slices)
+    fresh[:1] = False
+    after = np.flatnonzero(fresh)
+    return np.stack((pieces[after - 1], pieces[after]), axis=1) if len(sung) else links[:0]

@@ -1,0 +1,98 @@
+"""From a score and its harmony to the tuned score."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from retune.errors import Finding, WishError
+from retune.harmony.model import Harmony
+from retune.pitch import PitchClass
+from retune.score.model import Score
+from retune.tuning import figures
+from retune.tuning.assemble import Assembler, root_cents
+from retune.tuning.choose import choose
+from retune.tuning.fixed import CentsOf, accompaniment, temperament
+from retune.tuning.intervals import Floats
+from retune.tuning.layout import Layout, lay_out
+from retune.tuning.model import TunedScore
+from retune.tuning.placement import Problem, place
+from retune.tuning.policy import Policy
+from retune.tuning.ratios import scale_cents
+from retune.tuning.targets import Targets, aim
+
+
+def tune(score: Score, harmony: Harmony, policy: Policy) -> TunedScore:
+    """Give every note its tuned pitch.
+
+    Parameters
+    ----------
+    score : Score
+    harmony : Harmony
+        The analysis of that score.
+    policy : Policy
+
+    Raises
+    ------
+    WishError
+        Where the policy names a part that the score does not have.
+    """
+    lead = _lead(score, policy.melody)
+    tonic = policy.tonic or harmony.tonic.root
+    layout = lay_out(score, harmony)
+    chosen = choose(score, harmony, policy.prime_limit)
+    targets = aim(layout, harmony, chosen, tonic, policy.prime_limit)
+    tempered = temperament(policy.temperament, tonic)
+    unmoving = accompaniment(policy.accompaniment_tuning, tonic)
+
+    fixed = _piece_cents(score, layout, unmoving)
+    if tempered is None:
+        root = np.array([unmoving(c.root) if c.root else 0.0 for c in harmony.chords])
+        x = place(Problem(layout, targets, policy, fixed, root[layout.chord], lead))
+    else:
+        x = np.where(layout.tuned, _piece_cents(score, layout, tempered), fixed)
+    scale = tempered or _home_scale(tonic, policy.prime_limit)
+    roots = root_cents(layout, harmony, targets, x, scale)
+    limit, just = policy.prime_limit, tempered is None
+    assembler = Assembler(score, harmony, layout, targets, x, roots, limit, just)
+    home = [chord.index for chord in harmony.chords if chord.root == tonic]
+    return TunedScore(
+        score=score,
+        harmony=harmony,
+        policy=policy,
+        notes=assembler.notes(scale, unmoving),
+        root_cents=roots,
+        figures={
+            "purity": figures.purity(layout, targets, x, limit),
+            "held_shift": figures.held_shift(score, harmony, layout, x),
+            "melody": figures.melody(layout, x, limit),
+            "drift": figures.drift(score, harmony, home, roots),
+        },
+        findings=_findings(targets),
+    )
+
+
+def _findings(targets: Targets) -> tuple[Finding, ...]:
+    return ()
+
+
+def _lead(score: Score, name: str | None) -> int | None:
+    """Index of the part kept smoothest."""
+    if name is None:
+        return None
+    wanted = name.strip().casefold()
+    for part in score.parts:
+        if part.name.casefold() == wanted:
+            return part.index
+    names = ", ".join(part.name for part in score.parts)
+    raise WishError(f"no part is called '{name}'", hint=f"The parts are {names}")
+
+
+def _home_scale(tonic: PitchClass, limit: int) -> CentsOf:
+    return lambda pitch: scale_cents(pitch.fifths - tonic.fifths, limit)
+
+
+def _piece_cents(score: Score, layout: Layout, cents_of: CentsOf) -> Floats:
+    """Every piece's cents in a tuning that does not move."""
+    cents = np.array([cents_of(note.pitch.pitch_class) for note in score.notes])
+    pieces: Floats = cents[layout.note]
+    return pieces
