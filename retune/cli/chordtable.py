@@ -2,11 +2,12 @@
 
 A row is one chord: bar, beat, chord symbol, then for each part its pitch and cents (absolute,
 against equal temperament at the reference pitch; + is sharp), and the ratio where there is
-room. Non-chord tones stand in brackets, a dot repeats a note that is simply held on.
+room. The cents of non-chord tones stand in brackets.
 """
 
 from __future__ import annotations
 
+import textwrap
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 
@@ -89,13 +90,15 @@ def _cell(note: TunedNote, segment: Segment) -> Cell:
 
 def _cell_text(cell: Cell | None, layout: Layout) -> str:
     if cell is None:
-        return click.style(f"{'-':^{layout.cell - 2}}  ", dim=True)
-    text = f"{cell.pitch:<4}{cell.cents:>4}" if layout.pitch else f"{cell.cents:>4}"
-    if layout.ratio:
-        text += f" {cell.ratio:<5}"
-    if not cell.chord_tone:
-        text = f"({text.strip()})"
-    return click.style(f"{text:<{layout.cell}}", dim=not cell.chord_tone)
+        return f"{'-':>{7 if layout.pitch else 4}}"
+    cents = f"{cell.cents} " if cell.chord_tone else f"({cell.cents})"
+    text = f"{cell.pitch:<4}{cents:>5}" if layout.pitch else f"{cents:>5}"
+    return f"{text}{cell.ratio}" if layout.ratio else text
+
+
+def _cells(row: dict[int, tuple[TunedNote, Segment]], parts: Sequence[int], layout: Layout) -> str:
+    cells = (_cell(*row[part]) if part in row else None for part in parts)
+    return "".join(f"{_cell_text(cell, layout):<{layout.cell}}" for cell in cells).rstrip()
 
 
 def _short(name: str, room: int) -> str:
@@ -130,7 +133,7 @@ def table(tuned: TunedScore, columns: int, wanted: range | None = None) -> Itera
     groups = [parts[i : i + layout.across] for i in range(0, len(parts), layout.across)]
     for index, group in enumerate(groups):
         yield _heading(tuned, group, layout, index == 0)
-    shown_run = 1
+    shown_run, doubts, others = 1, False, False
     for chord, row in zip(tuned.harmony.chords, cells_by_chord(tuned), strict=True):
         bar = score.bar_at(chord.onset)
         if chord.root is None or (wanted is not None and bar.index not in wanted):
@@ -138,12 +141,23 @@ def table(tuned: TunedScore, columns: int, wanted: range | None = None) -> Itera
         if bar.run != shown_run:
             shown_run = bar.run
             yield click.style(f" time {bar.run} through", dim=True)
+        doubts |= chord.confidence < DOUBTFUL
+        others |= any(segment.role is not Role.CHORD_TONE for _, segment in row.values())
         beat = score.beat_at(chord.onset)
         left = f" {bar.number:<{_BAR}}{beat_text(beat):<{_BEAT}}"
         symbol = click.style(f"{symbol_of(chord):<{_CHORD}}", bold=True)
         for index, group in enumerate(groups):
-            cells = "".join(_cell_text(_cell(*row[p]) if p in row else None, layout) for p in group)
-            yield (left + symbol if index == 0 else " " * _MARGIN) + cells.rstrip()
+            yield (left + symbol if index == 0 else " " * _MARGIN) + _cells(row, group, layout)
+    yield from _legend(doubts, others, columns)
+
+
+def _legend(doubts: bool, others: bool, columns: int) -> list[str]:
+    words = ["Cents are against equal temperament at the reference pitch, + is higher."]
+    if others:
+        words.append("In brackets: not a tone of the chord.")
+    if doubts:
+        words.append("A question mark: the root is in doubt.")
+    return ["", *(f" {line}" for line in textwrap.wrap(" ".join(words), columns - 1))]
 
 
 def beat_text(beat: object) -> str:

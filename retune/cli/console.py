@@ -29,7 +29,8 @@ def colour_wanted(stream: object) -> bool:
     return bool(is_terminal) and not os.environ.get("NO_COLOR")
 
 
-def _wrapped(text: str, hanging: str) -> str:
+def wrapped(text: str, hanging: str = "") -> str:
+    """Text broken at the width of the terminal."""
     return textwrap.fill(
         text, width(), subsequent_indent=hanging, break_long_words=False, break_on_hyphens=False
     )
@@ -42,9 +43,9 @@ def _to_stderr(text: str) -> None:
 def print_error(what: str, where: Place | None = None, hint: str = "") -> None:
     """An error: where it is, what it is, and on a line of its own what to do next."""
     place = f"{where}: " if where and str(where) else ""
-    _to_stderr(click.style("Error: ", fg="red", bold=True) + _wrapped(place + what, "  "))
+    _to_stderr(click.style("Error: ", fg="red", bold=True) + wrapped(place + what, "  "))
     if hint:
-        _to_stderr(_wrapped(f"  {hint}.", "  "))
+        _to_stderr(wrapped(f"  {hint}.", "  "))
 
 
 def print_findings(findings: Sequence[Finding], everything: bool = False) -> None:
@@ -54,7 +55,7 @@ def print_findings(findings: Sequence[Finding], everything: bool = False) -> Non
     for finding in shown[:limit]:
         label = click.style(f"{finding.weight}: ", fg=_COLOURS[finding.weight])
         where = f"{place}: " if (place := _inside(finding.where)) else ""
-        _to_stderr("  " + label + _wrapped(where + finding.what, "    "))
+        _to_stderr("  " + label + wrapped(where + finding.what, "    "))
     hidden = len(findings) - min(len(shown), limit)
     if hidden:
         _to_stderr(f"  {hidden} more remark{'s' * (hidden > 1)} with --findings")

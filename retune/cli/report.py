@@ -6,7 +6,7 @@ from typing import TYPE_CHECKING
 
 import click
 
-from retune.cli.console import print_findings, say, width
+from retune.cli.console import print_findings, say, width, wrapped
 
 if TYPE_CHECKING:
     from retune.adapters.disk import WriteReport
@@ -38,18 +38,18 @@ def counted(number: int, noun: str) -> str:
 
 
 def summary(tuned: TunedScore) -> str:
-    """Two lines on what was read and how it was tuned."""
+    """A few lines on what was read and how it was tuned."""
     score = tuned.score
     sizes = ", ".join(
         [
-            counted(len(score.bars), "bar"),
             counted(len(score.parts), "part"),
+            counted(len(score.bars), "bar"),
             counted(len(score.notes), "note"),
             f"home tonic {tonic_name(tuned)}",
         ]
     )
-    title = click.style(score.title or score.stem, bold=True)
-    return f"{title}: {sizes}\n{policy_line(tuned.policy)}"
+    title = click.style(wrapped(score.title or score.stem), bold=True)
+    return f"{title}\n{sizes}\n{wrapped(policy_line(tuned.policy))}"
 
 
 def report_findings(tuned: TunedScore, everything: bool) -> None:
