@@ -62,7 +62,7 @@ class PartState:
     pitches: dict[tuple[str | None, ...], PitchReading] = field(default_factory=dict)
     shared_denominator: int = 1
     lengths: dict[str | None, Fraction | None] = field(default_factory=dict)
-    fitting: dict[tuple[Fraction, str | None, int], bool] = field(default_factory=dict)
+    fitting: dict[tuple[str | None, str | None, int], bool] = field(default_factory=dict)
 
     def transposition(self, staff: int) -> Transposition:
         """The interval in force on a staff; an entry for staff 0 holds for all others."""

@@ -83,7 +83,7 @@ def _fits(element: Element, fields: Fields, length: Fraction, part: PartState) -
     dots = sum(1 for _ in element.iterchildren("dot")) if "dot" in fields else 0
     if "time-modification" in fields:
         return _agree(_printed_value(element, fields), length, part)
-    same = (length, fields["type"].text, dots)
+    same = (fields["duration"].text, fields["type"].text, dots)
     if same not in part.fitting:
         part.fitting[same] = _agree(_printed_value(element, fields), length, part)
     return part.fitting[same]

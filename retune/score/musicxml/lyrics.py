@@ -3,14 +3,17 @@
 from __future__ import annotations
 
 import re
+from functools import lru_cache
 
 from retune.adapters.xml import Element
-from retune.score.musicxml.values import words
+from retune.score.musicxml.values import MAX_TEXT, words
 from retune.written import WrittenLyric
 
 UNDERTIE = "\u203f"
 HUMMED = "mm"
 """What is written for a hummed note (common practice, no source)."""
+
+MAX_LABEL = 40
 
 _SYLLABICS = ("single", "begin", "middle", "end")
 _NUMBERED = re.compile(r"(?:.*[^0-9])?0*([1-9][0-9]{0,3})")
@@ -40,7 +43,11 @@ def _syllable(lyric: Element) -> WrittenLyric | None:
             text, syllabics = text or HUMMED, syllabics or ["single"]
     if not text:
         return None
-    return WrittenLyric(text, _joined_syllabic(syllabics), _verse(lyric), _passes(lyric))
+    text = text[:MAX_TEXT]
+    number, name = (lyric.get("number") or "")[:MAX_LABEL], (lyric.get("name") or "")[:MAX_LABEL]
+    return WrittenLyric(
+        text, _joined_syllabic(syllabics), _verse(number, name), _passes(lyric.get("time-only"))
+    )
 
 
 def _joint(text: str | None) -> str:
@@ -56,6 +63,8 @@ def _joint(text: str | None) -> str:
 
 def _joined_syllabic(syllabics: list[str]) -> str:
     """The place in its word of several syllables on one note, taken together."""
+    if len(syllabics) == 1:
+        return syllabics[0]
     begins = syllabics[0] in ("single", "begin")
     ends = syllabics[-1] in ("single", "end")
     return {(True, True): "single", (True, False): "begin", (False, True): "end"}.get(
@@ -63,9 +72,10 @@ def _joined_syllabic(syllabics: list[str]) -> str:
     )
 
 
-def _verse(lyric: Element) -> str:
+@lru_cache(maxsize=1024)
+def _verse(number: str, name: str) -> str:
     """Verse number, or "chorus" for a line the file calls so; names like part1verse2 mean 2."""
-    number, name = (lyric.get("number") or "").strip(), (lyric.get("name") or "").strip()
+    number, name = number.strip(), name.strip()
     if _CHORUS.search(number) or _CHORUS.search(name):
         return "chorus"
     for label in (number, name):
@@ -75,5 +85,5 @@ def _verse(lyric: Element) -> str:
     return number or name if (number or name).lower() not in ("", "verse") else "1"
 
 
-def _passes(lyric: Element) -> tuple[int, ...]:
-    return tuple(int(number) for number in _PASS.findall(lyric.get("time-only") or ""))
+def _passes(time_only: str | None) -> tuple[int, ...]:
+    return tuple(map(int, _PASS.findall(time_only))) if time_only else ()

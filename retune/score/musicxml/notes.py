@@ -72,7 +72,7 @@ def read_note(element: Element, bar: BarDraft) -> None:
     elif part.clefs.get(slot.staff) == "percussion":
         part.unpitched += 1
         bar.remark(Weight.DOUBT, "a note on a percussion staff is read as unpitched", slot.onset)
-    elif slot.duration > 0 or "grace" in fields:
+    elif slot.duration or "grace" in fields:
         _read_notehead(element, fields, slot, source, bar)
 
 
@@ -93,7 +93,7 @@ def _slot(element: Element, fields: Fields, bar: BarDraft) -> Slot:
 
 
 def _read_rest(element: Element, fields: Fields, slot: Slot, bar: BarDraft) -> None:
-    if slot.duration > 0:
+    if slot.duration:
         notations = _read_notations(element, slot, bar) if "notations" in fields else NO_NOTATIONS
         hidden = element.get("print-object") == "no"
         bar.rests.append(

@@ -15,6 +15,8 @@ MAX_TEXT = 1000
 MAX_DIGITS = 24
 """Longest number that is looked at; longer ones are hostile or broken."""
 
+_MAX_PADDED = 4 * MAX_DIGITS
+
 _DECIMAL = re.compile(r"[+-]?(?:[0-9]+\.?[0-9]*|\.[0-9]+)")
 
 QUARTERS_OF_TYPE = {
@@ -36,16 +38,18 @@ QUARTERS_OF_TYPE = {
 """Quarter notes in each note-type value of MusicXML."""
 
 
-@lru_cache(maxsize=4096)
 def decimal(text: str | None) -> Fraction | None:
     """The value of an xs:decimal, exactly; None where the text is none or too long.
 
     >>> decimal(" -1.5 "), decimal("1e99"), decimal(None)
     (Fraction(-3, 2), None, None)
     """
-    if text is None or len(text) > 4 * MAX_DIGITS:
-        return None
-    text = text.strip()
+    return None if text is None or len(text) > _MAX_PADDED else _decimal(text)
+
+
+@lru_cache(maxsize=4096)
+def _decimal(padded: str) -> Fraction | None:
+    text = padded.strip()
     if len(text) > MAX_DIGITS or _DECIMAL.fullmatch(text) is None:
         return None
     return Fraction(text)
@@ -58,9 +62,9 @@ def whole(text: str | None, low: int, high: int) -> int | None:
     (2, 2, None, None)
     """
     value = decimal(text)
-    if value is None or value.denominator != 1 or not low <= value <= high:
+    if value is None or value.denominator != 1:
         return None
-    return value.numerator
+    return value.numerator if low <= value.numerator <= high else None
 
 
 def words(element: Element | None) -> str:
