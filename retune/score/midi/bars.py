@@ -89,16 +89,17 @@ class BarGrid:
         beat = 1 + (onset - span.onset) * span.metre[1] / 4
         return Place(part=part, bar=str(index + 1), beat=str(beat))
 
+    def bars_of(self, onset: Fraction, end: Fraction) -> range:
+        """The bars that a note sounds in."""
+        last = self.index_at(end)
+        return range(self.index_at(onset), last + (self.spans[last].onset < end))
+
     def cut(self, onset: Fraction, end: Fraction) -> Iterator[Piece]:
         """The pieces of a note, one in each bar it sounds in."""
-        first = index = self.index_at(onset)
-        while True:
+        for index in self.bars_of(onset, end):
             span = self.spans[index]
             start, stop = max(onset, span.onset), min(end, span.end)
-            yield Piece(index, start - span.onset, stop - start, index == first, stop == end)
-            if stop == end:
-                return
-            index += 1
+            yield Piece(index, start - span.onset, stop - start, start == onset, stop == end)
 
 
 def _spans(metres: Mapping[Fraction, tuple[int, int]], end: Fraction) -> Iterator[BarSpan]:

@@ -99,13 +99,12 @@ def _check_length(conductor: Conductor, end: Fraction, limits: Limits) -> None:
 
 def _check_noteheads(lines: Sequence[Line], grid: BarGrid, limits: Limits) -> None:
     """Notes held over many bars are cut into a notehead for each: hold them to the limit too."""
-    heads = sum(
-        1 + grid.index_at(note.end) - grid.index_at(note.onset)
-        for line in lines
-        for note in line.notes
-    )
-    if heads > 2 * limits.max_notes:
-        raise LimitError(f"the notes of the MIDI file lie over {heads} bars in all")
+    heads = sum(len(grid.bars_of(note.onset, note.end)) for line in lines for note in line.notes)
+    if heads > limits.max_notes:
+        raise LimitError(
+            f"tied over the bar lines, the MIDI file has {heads} noteheads; at most"
+            f" {limits.max_notes} are read"
+        )
 
 
 def _pitches(lines: Sequence[Line], conductor: Conductor) -> Mapping[str, Pitch]:
