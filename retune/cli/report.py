@@ -2,14 +2,15 @@
 
 from __future__ import annotations
 
+from itertools import groupby
 from typing import TYPE_CHECKING
 
 import click
 
-from retune.cli.console import print_findings, say, width, wrapped
+from retune.cli.console import print_findings, say, wrapped
 
 if TYPE_CHECKING:
-    from retune.adapters.disk import WriteReport
+    from retune.adapters.disk import WriteReport, WrittenFile
     from retune.tuning.model import TunedScore
     from retune.tuning.policy import Policy
 
@@ -57,11 +58,25 @@ def report_findings(tuned: TunedScore, everything: bool) -> None:
     print_findings((*tuned.score.findings, *tuned.findings), everything)
 
 
+def _folder_of(name: str) -> str:
+    folder, slash, _ = name.rpartition("/")
+    return folder + slash
+
+
+def _about(file: WrittenFile, alone: bool) -> str:
+    """A file's notes, with its name unless it is the only one of its folder."""
+    words = "; ".join(line for line in (file.note, file.checked) if line)
+    return words if alone else f"{file.name.rpartition('/')[2]}: {words}"
+
+
 def report_written(report: WriteReport) -> None:
-    """The files written, each with its note."""
+    """The files written, folder by folder, and what is to be said of them."""
     say(f"Wrote {counted(len(report.written), 'file')} to {report.folder}")
-    column = max((len(file.name) for file in report.written), default=0)
-    for file in report.written:
-        lines = [line for line in (file.note, file.checked) if line]
-        text = f"  {file.name:<{min(column, width() // 2)}}  {'; '.join(lines)}"
-        say(text.rstrip())
+    for folder, group in groupby(report.written, key=lambda file: _folder_of(file.name)):
+        files = list(group)
+        alone = len(files) == 1
+        what = files[0].name.removeprefix(folder) if alone else counted(len(files), "file")
+        say(f"  {folder:<8} {what}" if folder else f"  {what}")
+        for file in files:
+            if file.note or file.checked:
+                say(wrapped(f"           {_about(file, alone)}", " " * 11))
