@@ -20,10 +20,16 @@ _BEATS = re.compile(r"[0-9]{1,4}(?:\s*\+\s*[0-9]{1,4}){0,15}")
 
 def read_attributes(element: Element, bar: BarDraft) -> None:
     """Read an <attributes> element into the bar and the part."""
+    known_keys = len(bar.keys)
     for child in element:
         read = _READERS.get(child.tag)
         if read is not None:
             read(child, bar)
+    # Keys are written too; the transposition that makes them sound may stand behind them.
+    shift = bar.part.transposition(1).fifths
+    bar.keys[known_keys:] = [
+        (onset, (fifths + shift, mode)) for onset, (fifths, mode) in bar.keys[known_keys:]
+    ]
     _watch_octaves(bar)
 
 

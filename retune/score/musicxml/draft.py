@@ -144,8 +144,9 @@ class BarDraft:
 
     def report(self) -> None:
         """Hand the findings on with bar and beat; a first bar that is short is a pick-up."""
-        length = self.part.bar_length
-        begins = length - self.reach if self.index == 0 and ZERO < self.reach < length else ZERO
+        begins = ZERO
+        if self.index == 0 and self.metres:
+            begins = max(self.part.bar_length - self.reach, ZERO)
         beat = Fraction(4, self.part.metre[1])
         for weight, what, onset in self.doubts:
             place = str(1 + (onset + begins) / beat)
