@@ -1,0 +1,288 @@
+"""The one writer: all files of a run come to stand in the folder together, or none does.
+
+Every file is staged in a hidden folder inside the target folder, flushed to the disk, read back
+for its check, and only then renamed to its place. Whatever stops the run, an error, an
+interrupt, a full disk, is undone: staged files, files placed already, folders made. A hidden
+manifest lists what was written with its SHA-256; only a file that it lists, unchanged, is ever
+replaced.
+"""
+
+from __future__ import annotations
+
+import errno
+import os
+import secrets
+import shutil
+import stat
+from collections.abc import Callable, Iterator, Mapping, Sequence
+from concurrent.futures import ThreadPoolExecutor
+from contextlib import contextmanager
+from dataclasses import dataclass
+from pathlib import Path
+from typing import Protocol
+
+from retune.adapters.filenames import check_names
+from retune.adapters.manifest import MANIFEST_NAME, Manifest, digest_of, digest_of_file
+from retune.errors import OutputError, Place
+
+_STAGING = ".retune-staging-"
+_FLUSHED_TOGETHER = 8
+_NO_SPACE = "Free some space on the disk, or choose another folder"
+_HINTS = {
+    errno.ENOSPC: _NO_SPACE,
+    errno.EDQUOT: _NO_SPACE,
+    errno.EACCES: "Choose a folder you may write to",
+    errno.EPERM: "Choose a folder you may write to",
+    errno.EROFS: "Choose a folder on a disk that can be written",
+    errno.ENAMETOOLONG: "Choose a folder with a shorter path",
+    errno.ENOTDIR: "Choose another folder: a part of this path is a file",
+    errno.EEXIST: "Choose another folder: this is a file",
+}
+
+
+class Writable(Protocol):
+    """What the writer takes."""
+
+    @property
+    def name(self) -> str:
+        """Relative to the folder, with / between folders."""
+
+    @property
+    def data(self) -> bytes:
+        """The whole content."""
+
+    @property
+    def note(self) -> str:
+        """One line for the user, or empty."""
+
+    @property
+    def check(self) -> Callable[[bytes], str] | None:
+        """Called with the bytes as read back; raises `OutputError`."""
+
+
+@dataclass(frozen=True, slots=True)
+class WrittenFile:
+    """One file on disk: its size in bytes, its note, and what its check said."""
+
+    name: str
+    size: int
+    note: str = ""
+    checked: str = ""
+
+
+@dataclass(frozen=True, slots=True)
+class WriteReport:
+    """What a run wrote, in the order given."""
+
+    folder: Path
+    written: tuple[WrittenFile, ...]
+
+
+def write_all(files: Sequence[Writable], folder: Path) -> WriteReport:
+    """Write all files into a folder, which is made where it does not exist.
+
+    Raises
+    ------
+    OutputError
+        A name that leads out of the folder or that some system refuses, two names that differ
+        only in case, a file of the same name that is not the tool's own and unchanged, a folder
+        that cannot be written, a full disk, or a file that fails its check. Nothing is left.
+    """
+    check_names([file.name for file in files])
+    if not files:
+        return WriteReport(folder, ())
+    undo: _Undo = []
+    try:
+        return _write(files, folder, undo)
+    except BaseException:
+        _run_all(undo)
+        raise
+
+
+_Undo = list[Callable[[], object]]
+"""What to do, last first, should the run fail."""
+
+
+def _run_all(undo: _Undo) -> None:
+    """Undo everything; an action that is interrupted runs again."""
+    while undo:
+        try:
+            undo[-1]()
+        except OSError:
+            pass
+        except KeyboardInterrupt:
+            continue
+        undo.pop()
+
+
+def _write(files: Sequence[Writable], folder: Path, undo: _Undo) -> WriteReport:
+    with _explained(folder):
+        _make_folder(folder, undo)
+        manifest = Manifest.load(folder / MANIFEST_NAME)
+    for file in files:
+        _require_replaceable(folder, file.name, manifest)
+    with _explained(folder):
+        staging = folder / f"{_STAGING}{secrets.token_hex(8)}"
+        undo.append(lambda: shutil.rmtree(staging, ignore_errors=True))
+        staging.mkdir()
+    staged = {file.name: staging / str(number) for number, file in enumerate(files)}
+    _stage_all(files, staged, folder)
+    written = tuple(_read_back(file, staged[file.name], folder) for file in files)
+    digests = {file.name: digest_of(file.data) for file in files}
+    # Old and new digests both stand while files are renamed, so that even after a power cut
+    # the next run knows every file as the tool's own.
+    _save(manifest.with_both(digests), folder, staging, undo)
+    for name, path in staged.items():
+        with _explained(folder / name):
+            _make_folder((folder / name).parent, undo)
+            _place(path, folder / name, undo)
+    _save(manifest.with_only(digests), folder, staging, undo)
+    # Undo is over: from here on the files stand, and an interrupt comes too late.
+    undo.clear()
+    shutil.rmtree(staging, ignore_errors=True)
+    for place in {folder, *((folder / name).parent for name in staged)}:
+        _flush_folder(place)
+    return WriteReport(folder, written)
+
+
+@contextmanager
+def _explained(path: Path) -> Iterator[None]:
+    """Turn what the system says into an `OutputError` about this path."""
+    try:
+        yield
+    except OSError as error:
+        reason = error.strerror or type(error).__name__
+        hint = _HINTS.get(error.errno or 0, "Choose another folder")
+        raise OutputError(f"cannot be written: {reason}", Place(str(path)), hint) from error
+
+
+def _make_folder(folder: Path, undo: _Undo) -> None:
+    """Make a folder and those above it; what exists already stays on failure."""
+    missing = []
+    place = folder
+    while not place.exists() and place != place.parent:
+        missing.append(place)
+        place = place.parent
+    for place in reversed(missing):
+        undo.append(place.rmdir)
+        try:
+            place.mkdir()
+        except OSError:
+            undo.pop()
+            raise
+    if not folder.is_dir():
+        raise NotADirectoryError(errno.ENOTDIR, os.strerror(errno.ENOTDIR))
+
+
+def _require_replaceable(folder: Path, name: str, manifest: Manifest) -> None:
+    """Nothing of that name, or a file of the tool's own that nobody has changed since."""
+    with _explained(folder / name):
+        for parent in [
+            folder.joinpath(*name.split("/")[:n]) for n in range(1, name.count("/") + 1)
+        ]:
+            mode = _mode(parent)
+            if mode is not None and not stat.S_ISDIR(mode):
+                raise _refused(parent, "is in the way and is no folder")
+        path = folder / name
+        mode = _mode(path)
+        if mode is None:
+            return
+        if not stat.S_ISREG(mode):
+            raise _refused(path, "is in the way and is no plain file")
+        known = manifest.digests.get(name, ())
+        if not known:
+            raise _refused(path, "exists already and was not written by retune")
+        if digest_of_file(path) not in known:
+            raise _refused(path, "was changed since retune wrote it")
+
+
+def _mode(path: Path) -> int | None:
+    """Type bits of what stands at a path, links not followed; None for nothing."""
+    try:
+        return path.lstat().st_mode
+    except FileNotFoundError:
+        return None
+
+
+def _refused(path: Path, why: str) -> OutputError:
+    return OutputError(
+        f"{why}; it was left as it is", Place(str(path)), "Move it away, or choose another folder"
+    )
+
+
+def _stage_all(files: Sequence[Writable], staged: Mapping[str, Path], folder: Path) -> None:
+    """Write every file where nobody looks, and flush all of them to the disk."""
+    for file in files:
+        with _explained(folder / file.name):
+            staged[file.name].write_bytes(file.data)
+
+    def flush(name: str) -> None:
+        with _explained(folder / name), staged[name].open("rb+") as stream:
+            os.fsync(stream.fileno())
+
+    # A disk flushes many small files together, if it is asked for them together.
+    with ThreadPoolExecutor(_FLUSHED_TOGETHER) as pool:
+        for _ in pool.map(flush, staged):
+            pass
+
+
+def _read_back(file: Writable, path: Path, folder: Path) -> WrittenFile:
+    """Compare a staged file with what it should hold, and let its check read it."""
+    with _explained(folder / file.name):
+        found = path.read_bytes()
+    if found != file.data:
+        raise OutputError(
+            "reads back otherwise than it was written",
+            Place(str(folder / file.name)),
+            "The disk may be failing; choose another one",
+        )
+    checked = file.check(found) if file.check is not None else ""
+    return WrittenFile(file.name, len(found), file.note, checked)
+
+
+def _place(staged: Path, target: Path, undo: _Undo) -> None:
+    """Rename a staged file to its place; what it replaces comes back on failure."""
+    if _mode(target) is None:
+        undo.append(lambda: _remove(target, staged))
+    else:
+        kept = staged.with_name(f"{staged.name}.replaced")
+        undo.append(lambda: _bring_back(kept, target))
+        target.rename(kept)
+    staged.rename(target)
+
+
+def _remove(target: Path, staged: Path) -> None:
+    """Take away a file placed by this run, which is so if it is staged no more."""
+    if not staged.exists():
+        target.unlink(missing_ok=True)
+
+
+def _bring_back(kept: Path, target: Path) -> None:
+    if kept.exists():
+        kept.replace(target)
+
+
+def _save(manifest: Manifest, folder: Path, staging: Path, undo: _Undo) -> None:
+    """Put the manifest in its place."""
+    path = folder / MANIFEST_NAME
+    with _explained(path):
+        staged = staging / f"manifest-{len(undo)}"
+        with staged.open("xb") as stream:
+            stream.write(manifest.to_bytes())
+            stream.flush()
+            os.fsync(stream.fileno())
+        _place(staged, path, undo)
+
+
+def _flush_folder(folder: Path) -> None:
+    """Make renames last through a power cut, where the system lets a folder be flushed."""
+    try:
+        handle = os.open(folder, os.O_RDONLY)
+    except OSError:
+        return
+    try:
+        os.fsync(handle)
+    except OSError:
+        pass
+    finally:
+        os.close(handle)
