@@ -1,0 +1,145 @@
+"""The exporter `midi`: a Standard MIDI File that sounds just on every synth that obeys bends.
+
+Format 1, a conductor track and a track a part. Each note takes the key nearest its tuned pitch
+and a small bend; the bend range is set by RPN 0 on every channel, so that the file sounds alike
+everywhere. What is written is read back and compared with the tuned pitches.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Sequence
+from dataclasses import dataclass, field
+from typing import ClassVar
+
+from retune.adapters.midi import RawMidi, write_midi_file
+from retune.errors import OutputError
+from retune.export.base import OutputFile
+from retune.export.bend import DEFAULT_RANGE
+from retune.export.midi_channels import Channels, PartNeeds, allot
+from retune.export.midi_check import check_midi
+from retune.export.midi_conductor import conductor, slowest_tempo_lost
+from retune.export.midi_plan import PlannedNote, Planner
+from retune.export.midi_tracks import part_tracks
+from retune.export.names import numbered, safe_name
+from retune.export.options import require_allowed
+from retune.export.ticks import Ticks, ticks_for
+from retune.score.model import Part, Score
+from retune.tracks.take import Take
+
+VOICE_OOHS = 53
+"""General MIDI program of sung parts, counting from 0. Its neighbour 52, choir aahs, is up to
+42 cents out of tune in a common sound font, which no just third outlives."""
+
+_CENTRE = 64
+_PAN_WIDTH = 16
+"""Voices stand this far to either side at most: enough to tell them apart."""
+
+
+@dataclass(frozen=True, slots=True)
+class MidiOptions:
+    """Options of the exporter."""
+
+    channels: Channels = field(
+        default=Channels.AUTO,
+        metadata={"help": "channels a part: two, one, or auto for two while they fit"},
+    )
+    bend_range: int = field(
+        default=DEFAULT_RANGE,
+        metadata={"help": "pitch bend range in semitones", "least": 1, "most": 24},
+    )
+    glide_ms: float = field(
+        default=40.0,
+        metadata={
+            "help": "milliseconds in which a held note moves to a new pitch",
+            "least": 0,
+            "most": 1000,
+        },
+    )
+    program: int = field(
+        default=VOICE_OOHS,
+        metadata={
+            "help": "General MIDI program of the voices, counting from 0",
+            "least": 0,
+            "most": 127,
+        },
+    )
+
+
+class MidiExporter:
+    """Writes each take as one MIDI file."""
+
+    name: ClassVar[str] = "midi"
+    summary: ClassVar[str] = "MIDI with pitch bend on a channel or two a part; plays on any synth"
+    suffixes: ClassVar[tuple[str, ...]] = (".mid",)
+    Options: ClassVar[type[MidiOptions]] = MidiOptions
+
+    def export(self, takes: Sequence[Take], options: MidiOptions) -> Iterator[OutputFile]:
+        """Yield a file a take.
+
+        Raises
+        ------
+        OutputError
+            More different bends sound at once than MIDI has channels, or a pitch is beyond
+            its keys; bar and beat are named.
+        WishError
+            An option is out of its range.
+        """
+        require_allowed(self.name, options)
+        for take in takes:
+            yield _file_of(take, options)
+
+
+def _file_of(take: Take, options: MidiOptions) -> OutputFile:
+    tuned, score = take.tuned, take.tuned.score
+    if not score.notes:
+        raise OutputError("there is no note to write as MIDI", score.place(score.end))
+    ticks = ticks_for(tuned)
+    planned = Planner(tuned, ticks, options.bend_range, options.glide_ms / 1000.0).notes()
+    by_part: list[list[PlannedNote]] = [[] for _ in score.parts]
+    for note in planned:
+        by_part[note.part].append(note)
+    needs = [
+        PartNeeds(notes, _program(part, options.program), part.tuned)
+        for part, notes in zip(score.parts, by_part, strict=True)
+    ]
+    allotment = allot(score, needs, options.channels)
+    end = max(ticks.at(score.end), *(note.off for note in planned))
+    names = numbered(part.name or f"Part {part.index + 1}" for part in score.parts)
+    tracks = part_tracks(names, allotment.lanes, _pans(score), options.bend_range, end)
+    data = write_midi_file(RawMidi(1, ticks.division, (conductor(score, ticks, end), *tracks)))
+    return OutputFile(
+        _file_name(take),
+        data,
+        "; ".join([allotment.note, *_remarks(score, ticks)]),
+        lambda found: check_midi(found, tuned, options.bend_range),
+    )
+
+
+def _program(part: Part, voices: int) -> int:
+    """The file's own program for instruments; singers get one that is in tune."""
+    return voices if part.tuned or part.program is None else part.program
+
+
+def _pans(score: Score) -> list[int]:
+    """Voices from left to right in score order, accompaniment in the middle."""
+    voices = [part.index for part in score.parts if part.tuned]
+    pans = [_CENTRE] * len(score.parts)
+    if len(voices) > 1:
+        for place, index in enumerate(voices):
+            pans[index] = _CENTRE - _PAN_WIDTH + 2 * _PAN_WIDTH * place // (len(voices) - 1)
+    return pans
+
+
+def _remarks(score: Score, ticks: Ticks) -> Iterator[str]:
+    """What the file states less exactly than the score does."""
+    if ticks.error:
+        microseconds = 1e6 * float(ticks.error) * 60.0 / float(score.tempo.changes[0].qpm)
+        yield f"onsets within {microseconds:.0f} microseconds, as no MIDI division holds them all"
+    if slowest_tempo_lost(score):
+        yield "a tempo under 3.6 quarter notes a minute is written as 3.6, the slowest there is"
+
+
+def _file_name(take: Take) -> str:
+    folders = ["midi", *([safe_name(take.folder)] if take.folder else [])]
+    stem = safe_name(take.tuned.score.stem)
+    return "/".join([*folders, f"{safe_name(take.name)} - {stem}.mid"])

@@ -1,0 +1,146 @@
+"""What each note of a take becomes in MIDI: key, ticks and the bends it needs, no channel yet.
+
+Conventions
+-----------
+* `on` and `off` are ticks; `start` and `stop` are seconds by the tempo map.
+* A pitch is a float key number on the grid of A4 = 440 Hz, the reference pitch included.
+* `bends` are (tick, value) with ascending ticks; the first stands at `on`.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Iterator
+from dataclasses import dataclass, replace
+from itertools import pairwise
+
+from retune.errors import OutputError
+from retune.export.bend import bend_step, bend_value, nearest_key
+from retune.export.ticks import Ticks
+from retune.score.tempo import TempoMap
+from retune.tuning.model import Segment, TunedNote, TunedScore
+from retune.units import reference_offset
+
+_GLIDE_STEP_CENTS = 0.5
+_GLIDE_STEP_SECONDS = 0.004
+"""A glide moves in steps of half a cent, but no faster than every four milliseconds: finer
+steps are not heard, faster ones crowd a MIDI cable (about one message a millisecond)."""
+
+
+@dataclass(frozen=True, slots=True)
+class PlannedNote:
+    """One note on its way to a track; `part` is its index in the score, as `note` is its own."""
+
+    note: int
+    part: int
+    on: int
+    off: int
+    start: float
+    stop: float
+    key: int
+    velocity: int
+    lyric: str
+    bends: tuple[tuple[int, int], ...]
+
+    def shortened(self) -> PlannedNote:
+        """The note released a tick early, so that another may take its channel at its end."""
+        return replace(self, off=max(self.on + 1, self.off - 1))
+
+
+def pitch_of(tuned: TunedScore, note: TunedNote, segment: Segment) -> float:
+    """Pitch of a segment as a float key number on the grid of A4 = 440 Hz."""
+    offset = reference_offset(tuned.policy.reference_hz)
+    return note.note.pitch.key + (segment.cents + offset) / 100.0
+
+
+@dataclass(frozen=True, slots=True)
+class Planner:
+    """Plans the notes of one score; the bend range is in semitones, a glide in seconds."""
+
+    tuned: TunedScore
+    ticks: Ticks
+    bend_range: int
+    glide: float
+
+    def notes(self) -> list[PlannedNote]:
+        """All notes by onset, then part, then key.
+
+        Raises `OutputError` for a pitch that no MIDI key and bend reaches.
+        """
+        planned = [self._planned(index, note) for index, note in enumerate(self.tuned.notes)]
+        planned.sort(key=lambda note: (note.on, note.part, note.key))
+        return planned
+
+    def _planned(self, index: int, tuned_note: TunedNote) -> PlannedNote:
+        note, segments = tuned_note.note, tuned_note.segments
+        tempo = self.tuned.score.tempo
+        on = self.ticks.at(note.onset)
+        pitches = [pitch_of(self.tuned, tuned_note, segment) for segment in segments]
+        key = nearest_key(pitches[0])
+        self._require_reach(tuned_note, key, pitches)
+        bends = [(on, bend_value(100.0 * (pitches[0] - key), self.bend_range))]
+        for (before, after), segment in zip(pairwise(pitches), segments[1:], strict=True):
+            if before != after:
+                cents = (100.0 * (before - key), 100.0 * (after - key))
+                bends.extend(self._glide(segment, cents, tempo))
+        return PlannedNote(
+            index,
+            note.part,
+            on,
+            max(self.ticks.at(note.end), on + 1),
+            tempo.seconds(note.onset),
+            tempo.seconds(note.end),
+            key,
+            note.velocity,
+            note.lyric,
+            tuple(_thinned(bends)),
+        )
+
+    def _glide(
+        self, segment: Segment, cents: tuple[float, float], tempo: TempoMap
+    ) -> Iterator[tuple[int, int]]:
+        """Bends from one pitch to the next: the first step at the segment's onset, the last
+        after the glide time or half the segment, whichever is shorter."""
+        start, end = self.ticks.at(segment.onset), self.ticks.at(segment.end)
+        seconds = tempo.seconds(segment.end) - tempo.seconds(segment.onset)
+        span = min(self.glide, seconds / 2)
+        length = math.floor((end - start) * span / seconds) if seconds > 0 else 0
+        before, after = cents
+        steps = min(
+            math.ceil(abs(after - before) / _GLIDE_STEP_CENTS),
+            math.floor(span / _GLIDE_STEP_SECONDS),
+        )
+        for step in range(1, steps):
+            tick = start + length * (step - 1) // (steps - 1)
+            value = before + (after - before) * step / steps
+            yield tick, bend_value(value, self.bend_range)
+        yield start + (length if steps > 1 else 0), bend_value(after, self.bend_range)
+
+    def _require_reach(self, tuned_note: TunedNote, key: int, pitches: list[float]) -> None:
+        """Raise `OutputError` for a key that MIDI lacks or a bend beyond the range."""
+        note = tuned_note.note
+        if not 0 <= key <= 127:
+            raise OutputError(
+                f"{note.pitch.name} is beyond the keys of MIDI, which go from C-1 to G9",
+                self.tuned.score.place(note.onset, note.part),
+                "Transpose the score, or leave the part out",
+            )
+        reach = 100.0 * self.bend_range
+        farthest = max((100.0 * (pitch - key) for pitch in pitches), key=abs)
+        if not -reach <= farthest <= reach - bend_step(self.bend_range) / 2:
+            raise OutputError(
+                f"{note.pitch.name} moves {farthest:+.1f} cents from its key while it sounds, "
+                f"and the bend range is {self.bend_range} semitones",
+                self.tuned.score.place(note.onset, note.part),
+                "Widen it with --set midi.bend_range=12",
+            )
+
+
+def _thinned(bends: list[tuple[int, int]]) -> Iterator[tuple[int, int]]:
+    """One bend a tick, the last one; none that repeats the value before it."""
+    last = dict(bends)
+    value = None
+    for tick, following in last.items():
+        if following != value:
+            value = following
+            yield tick, following

@@ -1,0 +1,228 @@
+"""The exporter `notes`: every note with its chord, ratio and cents, as JSON and as CSV.
+
+Fractions are text ("3/2", "4"); onsets and durations are quarter notes as played; cents, Hz
+and seconds have six decimals.
+"""
+
+from __future__ import annotations
+
+import json
+import math
+from collections.abc import Iterable, Iterator, Mapping, Sequence
+from dataclasses import dataclass, field
+from fractions import Fraction
+from typing import Any, ClassVar
+
+from retune.export.base import OutputFile
+from retune.export.csvtext import Cell, csv_bytes
+from retune.export.names import safe_name
+from retune.export.places import Places, rounded
+from retune.harmony.model import Chord
+from retune.harmony.symbols import chord_symbol, chord_words
+from retune.tracks.take import Take
+from retune.tuning.model import Segment, TunedNote, TunedScore
+
+_VERSION = 1
+_COLUMNS = (
+    "note",
+    "part",
+    "name",
+    "onset",
+    "duration",
+    "bar",
+    "beat",
+    "pitch",
+    "key",
+    "lyric",
+    "seconds",
+    "length_seconds",
+    "chord",
+    "root",
+    "quality",
+    "symbol",
+    "role",
+    "ratio",
+    "cents",
+    "hz",
+)
+
+
+@dataclass(frozen=True, slots=True)
+class NotesOptions:
+    """Options of the exporter."""
+
+    bom: bool = field(
+        default=False,
+        metadata={"help": "start the CSV with a byte order mark, which some spreadsheets need"},
+    )
+
+
+class NotesExporter:
+    """Writes the note list of a piece, once however many takes there are."""
+
+    name: ClassVar[str] = "notes"
+    summary: ClassVar[str] = "Every note with chord, ratio, cents and Hz, for programs and tables"
+    suffixes: ClassVar[tuple[str, ...]] = (".json", ".csv")
+    Options: ClassVar[type[NotesOptions]] = NotesOptions
+
+    def export(self, takes: Sequence[Take], options: NotesOptions) -> Iterator[OutputFile]:
+        """Yield NAME.notes.csv and NAME.notes.json."""
+        tuned = takes[0].tuned
+        name = f"notes/{safe_name(tuned.score.stem)}.notes"
+        rows = _rows(tuned)
+        yield OutputFile(f"{name}.csv", csv_bytes(_COLUMNS, rows, options.bom))
+        yield OutputFile(f"{name}.json", "".join(_json_text(tuned)).encode("utf-8", "replace"))
+
+
+def _json_text(tuned: TunedScore) -> Iterator[str]:
+    """The document, an object a line inside its lists."""
+    places = Places(tuned)
+    yield "{"
+    yield ",\n ".join(f'"{key}": {_dumped(value)}' for key, value in _head(tuned).items())
+    lists: dict[str, Iterable[dict[str, Any]]] = {
+        "parts": _parts(tuned),
+        "chords": (_chord(tuned, places, chord) for chord in tuned.harmony.chords),
+        "notes": (_note(tuned, places, note) for note in tuned.notes),
+    }
+    for key, values in lists.items():
+        yield f',\n "{key}": ['
+        yield ",".join(f"\n  {_dumped(value)}" for value in values)
+        yield "]"
+    yield f',\n "figures": {_dumped(plain(tuned.figures))}}}\n'
+
+
+def _dumped(value: Any) -> str:
+    return json.dumps(value, ensure_ascii=False, allow_nan=False)
+
+
+def _head(tuned: TunedScore) -> dict[str, Any]:
+    policy = tuned.policy
+    held = "any" if math.isinf(policy.held_shift) else policy.held_shift
+    return {
+        "format": "retune-notes",
+        "version": _VERSION,
+        "title": tuned.score.title,
+        "reference_hz": rounded(policy.reference_hz),
+        "policy": {
+            "prime_limit": policy.prime_limit,
+            "drift": str(policy.drift),
+            "held_shift": held,
+            "temperament": str(policy.temperament),
+            "tonic": tuned.harmony.tonic.root.name,
+        },
+    }
+
+
+def _parts(tuned: TunedScore) -> list[dict[str, Any]]:
+    return [
+        {"index": part.index, "name": part.name, "tuned": part.tuned} for part in tuned.score.parts
+    ]
+
+
+def _chord(tuned: TunedScore, places: Places, chord: Chord) -> dict[str, Any]:
+    bar, beat = places.bar_and_beat(chord.onset)
+    root_cents = tuned.root_cents[chord.index]
+    return {
+        "index": chord.index,
+        "onset": str(chord.onset),
+        "duration": str(chord.duration),
+        "bar": bar,
+        "beat": beat,
+        "root": chord.root.name if chord.root else None,
+        "quality": str(chord.quality) if chord.quality else None,
+        "symbol": chord_symbol(chord) or None,
+        "root_cents": None if root_cents is None else rounded(root_cents),
+        "confidence": rounded(chord.confidence),
+        "runner_up": chord_words(*chord.runner_up) if chord.runner_up else None,
+    }
+
+
+def _note(tuned: TunedScore, places: Places, tuned_note: TunedNote) -> dict[str, Any]:
+    note = tuned_note.note
+    bar, beat = places.bar_and_beat(note.onset)
+    seconds, length = places.seconds(note.onset, note.end)
+    return {
+        "part": note.part,
+        "onset": str(note.onset),
+        "duration": str(note.duration),
+        "bar": bar,
+        "beat": beat,
+        "pitch": note.pitch.name,
+        "key": note.pitch.key,
+        "lyric": note.lyric,
+        "seconds": seconds,
+        "length_seconds": length,
+        "segments": [
+            _segment(tuned, places, tuned_note, segment) for segment in tuned_note.segments
+        ],
+    }
+
+
+def _segment(
+    tuned: TunedScore, places: Places, note: TunedNote, segment: Segment
+) -> dict[str, Any]:
+    seconds, length = places.seconds(segment.onset, segment.end)
+    return {
+        "onset": str(segment.onset),
+        "duration": str(segment.duration),
+        "chord": segment.chord,
+        "role": str(segment.role),
+        "ratio": None if segment.ratio is None else str(segment.ratio),
+        "cents": rounded(segment.cents),
+        "hz": rounded(tuned.hz(note, segment)),
+        "seconds": seconds,
+        "length_seconds": length,
+    }
+
+
+def _rows(tuned: TunedScore) -> Iterator[Sequence[Cell]]:
+    """A row a segment: its own times and place, and what its note and chord are."""
+    places = Places(tuned)
+    names = [part.name for part in tuned.score.parts]
+    chords = [
+        (
+            chord.root.name if chord.root else None,
+            str(chord.quality) if chord.quality else None,
+            chord_symbol(chord) or None,
+        )
+        for chord in tuned.harmony.chords
+    ]
+    for index, tuned_note in enumerate(tuned.notes):
+        note = tuned_note.note
+        for segment in tuned_note.segments:
+            yield (
+                index,
+                note.part,
+                names[note.part],
+                str(segment.onset),
+                str(segment.duration),
+                *places.bar_and_beat(segment.onset),
+                note.pitch.name,
+                note.pitch.key,
+                note.lyric,
+                *places.seconds(segment.onset, segment.end),
+                segment.chord,
+                *chords[segment.chord],
+                str(segment.role),
+                None if segment.ratio is None else str(segment.ratio),
+                rounded(segment.cents),
+                rounded(tuned.hz(tuned_note, segment)),
+            )
+
+
+def plain(value: Any) -> Any:
+    """A figure as JSON can state it: fractions as text, floats to six decimals, no infinities.
+
+    >>> plain({"drift": (1.25, Fraction(3, 2), float("inf"))})
+    {'drift': [1.25, '3/2', None]}
+    """
+    if isinstance(value, Mapping):
+        return {str(key): plain(inner) for key, inner in value.items()}
+    if isinstance(value, Fraction):
+        return str(value)
+    if isinstance(value, str) or value is None or isinstance(value, int):
+        return value
+    if isinstance(value, Iterable):
+        return [plain(inner) for inner in value]
+    number = float(value)
+    return rounded(number) if math.isfinite(number) else None
