@@ -1,0 +1,56 @@
+"""What README shows is what the tool prints, and its Python runs."""
+
+from __future__ import annotations
+
+import os
+import re
+import shlex
+import subprocess
+import sys
+from pathlib import Path
+
+import pytest
+
+ROOT = Path(__file__).parents[1]
+README = (ROOT / "README.md").read_text(encoding="utf-8")
+
+SHOWN = re.findall(r"```text\n\$ (retune .*)\n((?:.*\n)*?)```", README)
+"""Commands shown with their output: a text block that begins with `$ retune ...`."""
+
+
+def call(command: str, folder: Path) -> str:
+    """Standard error and output of a shown command, run in a copy of the bundled scores."""
+    (folder / "fixtures").symlink_to(ROOT / "fixtures")
+    environment = {**os.environ, "COLUMNS": "80", "NO_COLOR": "1"}
+    done = subprocess.run(
+        [sys.executable, "-m", *shlex.split(command)],
+        cwd=folder,
+        env=environment,
+        stdout=subprocess.PIPE,
+        stderr=subprocess.STDOUT,
+        text=True,
+        check=True,
+    )
+    return done.stdout
+
+
+def test_readme_shows_the_main_job() -> None:
+    assert [command.split()[1] for command, _ in SHOWN] == ["make", "show"]
+
+
+@pytest.mark.parametrize(("command", "output"), SHOWN, ids=lambda text: text.split("\n")[0][:20])
+def test_shown_output_is_real(command: str, output: str, tmp_path: Path) -> None:
+    assert call(command, tmp_path).rstrip() == output.rstrip()
+
+
+def test_python_example_runs(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    (code,) = re.findall(r"```python\n(.*?)```", README, re.DOTALL)
+    (tmp_path / "fixtures").symlink_to(ROOT / "fixtures")
+    monkeypatch.chdir(tmp_path)
+    exec(code, {})
+    assert list((tmp_path / "out").rglob("*.mid"))
+
+
+def test_every_linked_file_exists() -> None:
+    for name in re.findall(r"fixtures/[\w-]+\.\w+", README):
+        assert (ROOT / name).is_file(), name
