@@ -9,7 +9,7 @@ from retune.harmony.nonchord import find_roles
 from retune.harmony.segment import segment
 from retune.harmony.timeline import make_slices, make_timeline
 from retune.harmony.tonic import find_tonic
-from retune.harmony.weights import default_weights
+from retune.harmony.weights import Weights, default_weights
 from retune.pitch import PitchClass
 from retune.score.model import Score
 
@@ -30,10 +30,15 @@ def analyse(score: Score, tonic: PitchClass | None = None) -> Harmony:
         Slices and chords covering the piece without gaps, a fragment for every chord that each
         note sounds in, and the home tonic.
     """
+    return analyse_with(score, default_weights(), tonic)
+
+
+def analyse_with(score: Score, weights: Weights, tonic: PitchClass | None = None) -> Harmony:
+    """Analyse with other weights than the package's own."""
     timeline = make_timeline(score)
     slices = make_slices(score, timeline)
     evidence = gather_evidence(score, timeline)
-    chords = make_chords(score, slices, evidence, segment(evidence, default_weights()))
+    chords = make_chords(score, slices, evidence, segment(evidence, weights))
     return Harmony(
         slices=slices,
         chords=chords,

@@ -11,10 +11,12 @@ Conventions
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import TypeVar
 
 import numpy as np
 
 from retune.harmony.evidence import Evidence
+from retune.harmony.metre import TOLERANCE
 from retune.harmony.model import Quality
 from retune.harmony.states import (
     DEGREE_OF,
@@ -25,6 +27,7 @@ from retune.harmony.states import (
     ROOTS,
     STATES,
     Floats,
+    Ints,
     Singles,
 )
 from retune.harmony.weights import Weights
@@ -32,6 +35,8 @@ from retune.harmony.weights import Weights
 MAX_SPAN = 16
 MAX_QUARTERS = 4.0
 IMPOSSIBLE = -1e9
+
+_Array = TypeVar("_Array", Singles, Ints)
 
 PLAIN, DOMINANT, DIMINISHED = range(3)
 CLASS_OF = np.array(
@@ -73,15 +78,27 @@ class SegmentScorer:
     absent: Floats
     crossed: Floats
 
+    def heard(self, start: int, stop: int) -> Singles:
+        """1 where a pitch class sounds in the segment, shape (stop - start, 16, 12)."""
+        return _running_max(self.evidence.sounding.astype(np.float32), start, stop)
+
+    def strongest(self, start: int, stop: int) -> Ints:
+        """Strongest level strictly inside the segment, shape (stop - start, 16)."""
+        evidence = self.evidence
+        inner = _running_max(evidence.inner[:, None], start, stop)[:, :, 0]
+        crossed = np.zeros((evidence.count + 1, 1), dtype=np.int64)
+        crossed[:-1, 0] = evidence.level[1:]
+        before = _running_max(crossed, start, stop)[:, :-1, 0]
+        inner[:, 1:] = np.maximum(inner[:, 1:], before)
+        return inner
+
     def block(self, start: int, stop: int) -> Singles:
         """Scores of the segments that start in [start, stop), shape (stop - start, 16, 120)."""
-        evidence = self.evidence
-        count = evidence.count
-        rows = stop - start
-        scores = np.full((rows, MAX_SPAN, STATES), IMPOSSIBLE, dtype=np.float32)
-        heard = np.zeros((rows, ROOTS), dtype=np.float32)
-        strongest = np.zeros(rows, dtype=np.int64)
-        absent = self.absent.astype(np.float32)
+        count = self.evidence.count
+        time = self.evidence.time
+        absent = (1 - self.heard(start, stop)) @ self.absent.astype(np.float32)
+        crossed = self.crossed[self.strongest(start, stop)]
+        scores = np.full((stop - start, MAX_SPAN, STATES), IMPOSSIBLE, dtype=np.float32)
         for span in range(1, MAX_SPAN + 1):
             size = min(stop, count - span + 1) - start
             if size <= 0:
@@ -89,21 +106,28 @@ class SegmentScorer:
             head = slice(start, start + size)
             tail = slice(start + span - 1, start + size + span - 1)
             end = slice(start + span, start + size + span)
-            heard[:size] = np.maximum(heard[:size], evidence.sounding[tail])
-            if span > 1:
-                strongest[:size] = np.maximum(strongest[:size], evidence.level[tail])
-            strongest[:size] = np.maximum(strongest[:size], evidence.inner[tail])
-            lasted = evidence.time[end] - evidence.time[head]
+            lasted = time[end] - time[head]
             part = self.tones[end] - self.tones[head]
             part += (self.cover[end] - self.cover[head]) / lasted[:, None]
             part += self.first[head]
             part += self.last[tail]
-            part += (1 - heard[:size]) @ absent
-            part += self.crossed[strongest[:size], None]
+            part += absent[:size, span - 1]
+            part += crossed[:size, span - 1, None]
             if span > 1:
-                part[lasted > MAX_QUARTERS + 1e-6] = IMPOSSIBLE
+                part[lasted > MAX_QUARTERS + TOLERANCE] = IMPOSSIBLE
             scores[:size, span - 1] = part
         return scores
+
+
+def _running_max(rows: _Array, start: int, stop: int) -> _Array:
+    """Greatest value of rows i to i + span, for i in [start, stop), shape (rows, 16, ...)."""
+    largest = np.zeros((stop - start, MAX_SPAN, *rows.shape[1:]), dtype=rows.dtype)
+    largest[:, 0] = rows[start:stop]
+    for span in range(1, MAX_SPAN):
+        later = rows[start + span : stop + span]
+        largest[:, span] = largest[:, span - 1]
+        np.maximum(largest[: len(later), span], later, out=largest[: len(later), span])
+    return largest
 
 
 def make_scorer(evidence: Evidence, weights: Weights) -> SegmentScorer:

@@ -13,6 +13,7 @@ Conventions
 
 from __future__ import annotations
 
+import re
 from collections import defaultdict
 from collections.abc import Iterator
 from dataclasses import dataclass
@@ -28,6 +29,8 @@ from retune.harmony.model import Quality
 from retune.harmony.states import TONES
 from retune.score.model import Bar, Score
 
+LEADING_NUMBER = re.compile(r"\d+")
+"""Bars 4 and 4a are the two halves of the analysis's measure 4."""
 QUALITY_OF_TONES = {frozenset(tones): quality for quality, tones in TONES.items()}
 TRANSPOSED = {14: 5, 17: -2}
 """Semitones from the score in the corpus to the analysis, by Riemenschneider number."""
@@ -89,7 +92,9 @@ def madrigals(books: tuple[int, ...]) -> Iterator[Piece]:
     """Madrigals of Monteverdi's books that have both score and analysis."""
     folder = Path(str(music21_corpus.getWork("monteverdi/madrigal.3.1.rntxt"))).parent
     for book in books:
-        found = sorted(folder.glob(f"madrigal.{book}.*.rntxt"), key=lambda path: len(path.name))
+        found = sorted(
+            folder.glob(f"madrigal.{book}.*.rntxt"), key=lambda path: int(path.stem.split(".")[-1])
+        )
         for analysis in found:
             score = analysis.with_suffix(".mxl")
             if score.exists():
@@ -111,16 +116,17 @@ def read_labels(piece: Piece, score: Score) -> list[Label]:
     parsed = converter.parse(
         str(piece.analysis), format="romanText", forceSource=True, storePickle=False
     )
-    bars: dict[str, list[Bar]] = defaultdict(list)
+    bars: dict[int, list[Bar]] = defaultdict(list)
     for bar in score.bars:
-        bars[bar.number].append(bar)
+        number = LEADING_NUMBER.match(bar.number)
+        if number is not None:
+            bars[int(number[0])].append(bar)
     found: list[tuple[Fraction, Any]] = []
     for numeral in parsed.recurse().getElementsByClass("RomanNumeral"):
         measure = numeral.getContextByClass("Measure")
-        padding = Fraction(measure.paddingLeft)
-        offset = Fraction(numeral.getOffsetInHierarchy(measure)) + padding
-        for bar in bars.get(f"{measure.number}{measure.numberSuffix or ''}", []):
-            onset = bar.onset + offset - bar.begins
+        place = Fraction(numeral.getOffsetInHierarchy(measure)) + Fraction(measure.paddingLeft)
+        for bar in bars.get(measure.number, []):
+            onset = bar.onset + place - bar.begins
             if bar.onset <= onset < bar.end:
                 found.append((onset, numeral))
     found.sort(key=lambda pair: pair[0])

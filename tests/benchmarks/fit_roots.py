@@ -1,0 +1,395 @@
+"""Fit the weights of the harmonic analysis on the development set.
+
+    python tests/benchmarks/fit_roots.py            fit, print the figures, write weights.json
+    python tests/benchmarks/fit_roots.py --folds 5  cross-validate inside the development set
+
+The likelihood is of the human roots, not of a segmentation: minimised is
+-log P(all segmentations whose roots equal the labels), with a margin of one for each quarter
+that a segmentation has wrong (Gimpel & Smith 2010, softmax-margin), plus an L2 penalty.
+Gradients come from forward-backward over segments; all pieces advance in lockstep.
+"""
+
+from __future__ import annotations
+
+import argparse
+import json
+from dataclasses import dataclass
+from pathlib import Path
+
+import corpus
+import numpy as np
+import roots
+from corpus import Label, Piece
+from numpy.typing import NDArray
+from scipy.optimize import minimize
+
+import retune.harmony
+from retune.harmony.analysis import analyse_with
+from retune.harmony.evidence import Evidence, gather_evidence
+from retune.harmony.scoring import (
+    CLASS_OF,
+    MAX_SPAN,
+    SegmentScorer,
+    make_scorer,
+    motion_scores,
+)
+from retune.harmony.states import (
+    DEGREE_OF,
+    NON_CHORD,
+    QUALITIES,
+    QUALITY_OF,
+    ROOT_OF,
+    ROOTS,
+    STATES,
+)
+from retune.harmony.timeline import make_timeline
+from retune.harmony.weights import TERMS, Weights
+from retune.score.model import Score
+
+Array = NDArray[np.float64]
+
+Read = tuple[Score, list[Label]]
+
+WEIGHTS = Path(retune.harmony.__file__).with_name("weights.json")
+ORIGIN = (
+    "Fitted by tests/benchmarks/fit_roots.py on human analyses in music21's corpus: Bach's "
+    "chorales with even numbers among Riemenschneider's first twenty, Monteverdi's third book "
+    "of madrigals."
+)
+PENALTY = 2.0
+MARGIN = 1.0
+EMPHASIS = {"chorales": 6.0, "madrigals": 1.0}
+"""Chorales are few and short; a quarter of theirs counts as six of the madrigals'."""
+
+BOUNDS: dict[tuple[str, str], tuple[float | None, float | None]] = {
+    ("missing", "seventh"): (None, -1.5),
+    ("duration", "seventh"): (0.0, None),
+    ("count", "seventh"): (0.0, None),
+    ("coverage", "seventh"): (0.0, None),
+}
+"""Without these a seventh chord swallows its triad, at no loss of root agreement."""
+
+
+def pack(weights: Weights) -> Array:
+    """All weights as one vector, in the order of `TERMS`."""
+    return np.concatenate([weights[term] for term in TERMS])
+
+
+def unpack(vector: Array) -> Weights:
+    """The opposite of `pack`."""
+    terms, place = {}, 0
+    for term, names in TERMS.items():
+        terms[term] = vector[place : place + len(names)]
+        place += len(names)
+    return Weights(terms)
+
+
+@dataclass(frozen=True)
+class Example:
+    """One piece to learn from: evidence, wrong quarters per slice and root, and its weight."""
+
+    evidence: Evidence
+    wrong: Array
+    emphasis: float
+
+
+def spans_of(wrong: Array) -> Array:
+    """Wrong quarters of every segment and root, shape (n, 16, 12)."""
+    count = len(wrong)
+    sums = np.concatenate([np.zeros((1, ROOTS)), np.cumsum(wrong, axis=0)])
+    ends = np.minimum(np.arange(count)[:, None] + np.arange(1, MAX_SPAN + 1), count)
+    return np.asarray(sums[ends] - sums[np.arange(count)][:, None, :])
+
+
+class Lockstep:
+    """Forward-backward over several pieces at once, in scaled probabilities."""
+
+    def __init__(self, counts: list[int]) -> None:
+        self.counts = np.array(counts)
+        self.longest = int(self.counts.max())
+
+    def run(self, table: NDArray[np.float32], odds: Array) -> tuple[Array, NDArray, Array]:
+        """Log partition (pieces,), segment marginals like `table`, moves (pieces, 120, 12).
+
+        `table` has shape (pieces, n, 16, 120) and holds exponentiated scores by start.
+        """
+        pieces, longest = len(self.counts), self.longest
+        rows = np.arange(pieces)
+        forward = np.zeros((pieces, longest + 1, ROOTS))
+        fscale = np.zeros((pieces, longest + 1))
+        ending = np.zeros((pieces, longest + 1, STATES))
+        forward[:, 0] = 1.0
+        spans = np.arange(MAX_SPAN)
+        for end in range(1, longest + 1):
+            reach = min(MAX_SPAN, end)
+            starts = end - 1 - spans[:reach]
+            scale = fscale[:, starts]
+            top = scale.max(axis=1, keepdims=True)
+            enter = forward[:, starts] * np.exp(scale - top)[:, :, None]
+            scores = table[:, starts, spans[:reach]].reshape(pieces, reach, ROOTS, -1)
+            arrived = np.einsum("pkr,pkrq->prq", enter, scores).reshape(pieces, STATES)
+            total = arrived.sum(axis=1, keepdims=True)
+            total[total == 0] = 1.0
+            arrived /= total
+            ending[:, end] = arrived
+            fscale[:, end] = top[:, 0] + np.log(total[:, 0])
+            forward[:, end] = arrived @ odds
+        log_total = fscale[rows, self.counts] + np.log(ending[rows, self.counts].sum(axis=1))
+        backward = np.zeros((pieces, longest + 1 + MAX_SPAN, STATES))
+        bscale = np.full((pieces, longest + 1 + MAX_SPAN), -np.inf)
+        beginning = np.zeros((pieces, longest + 1, ROOTS))
+        backward[rows, self.counts] = 1.0
+        bscale[rows, self.counts] = 0.0
+        for start in range(longest - 1, -1, -1):
+            live = start < self.counts
+            scale = bscale[:, start + 1 : start + 1 + MAX_SPAN]
+            top = np.where(live[:, None], scale.max(axis=1, keepdims=True), 0.0)
+            onward = backward[:, start + 1 : start + 1 + MAX_SPAN] * np.exp(scale - top)[:, :, None]
+            begun = np.einsum("pks,pks->ps", onward, table[:, start])
+            by_root = begun.reshape(pieces, ROOTS, -1).sum(axis=2)
+            total = by_root.sum(axis=1, keepdims=True)
+            total[total == 0] = 1.0
+            by_root /= total
+            here = top[:, 0] + np.log(total[:, 0])
+            beginning[:, start] = by_root
+            bscale[live, start] = here[live]
+            backward[live, start] = (by_root @ odds.T)[live]
+        # Marginals: what enters, times the segment, times what follows.
+        shares = np.empty_like(table)
+        for piece in range(pieces):
+            count = self.counts[piece]
+            ends = np.minimum(np.arange(count)[:, None] + 1 + spans, longest + MAX_SPAN)
+            scale = fscale[piece, :count, None] + bscale[piece, ends] - log_total[piece]
+            after = backward[piece, ends] * np.exp(np.minimum(scale, 600.0))[:, :, None]
+            after *= np.repeat(forward[piece, :count], len(QUALITIES), axis=1)[:, None, :]
+            shares[piece, :count] = after * table[piece, :count]
+            shares[piece, count:] = 0.0
+        moves = np.zeros((pieces, STATES, ROOTS))
+        for piece in range(pieces):
+            inner = slice(1, self.counts[piece])
+            scale = fscale[piece, inner] + bscale[piece, inner] - log_total[piece]
+            left = ending[piece, inner] * np.exp(scale)[:, None]
+            moves[piece] = (left.T @ beginning[piece, inner]) * odds
+        return log_total, shares, moves
+
+
+class Objective:
+    """Penalised softmax-margin loss of a set of examples, with its gradient."""
+
+    def __init__(self, examples: list[Example], penalty: float = PENALTY) -> None:
+        self.examples = examples
+        self.penalty = penalty
+        self.lockstep = Lockstep([example.evidence.count for example in examples])
+        self.wrong = [spans_of(example.wrong).astype(np.float32) for example in examples]
+
+    def __call__(self, vector: Array) -> tuple[float, Array]:
+        weights = unpack(vector)
+        longest = self.lockstep.longest
+        shape = (len(self.examples), longest, MAX_SPAN, STATES)
+        free = np.zeros(shape, dtype=np.float32)
+        bound = np.zeros(shape, dtype=np.float32)
+        offsets = np.zeros(len(self.examples))
+        odds = np.exp(motion_scores(weights))
+        scorers = [make_scorer(example.evidence, weights) for example in self.examples]
+        for piece, (scorer, wrong) in enumerate(zip(scorers, self.wrong, strict=True)):
+            scores = scorer.block(0, scorer.evidence.count)
+            # One constant a slice keeps the numbers near one; it cancels between the passes.
+            level = scores[:, 0].max(axis=1)
+            sums = np.concatenate([[0.0], np.cumsum(level)])
+            ends = np.minimum(
+                np.arange(len(level))[:, None] + np.arange(1, MAX_SPAN + 1), len(level)
+            )
+            scores -= (sums[ends] - sums[: len(level), None])[:, :, None].astype(np.float32)
+            table = np.exp(np.minimum(scores, 80.0)).reshape(len(level), MAX_SPAN, ROOTS, -1)
+            free[piece, : len(level)] = (table * np.exp(MARGIN * wrong)[..., None]).reshape(
+                len(level), MAX_SPAN, STATES
+            )
+            bound[piece, : len(level)] = (table * (wrong < 1e-6)[..., None]).reshape(
+                len(level), MAX_SPAN, STATES
+            )
+            offsets[piece] = sums[-1]
+        log_free, shares_free, moves_free = self.lockstep.run(free, odds)
+        log_bound, shares_bound, moves_bound = self.lockstep.run(bound, odds)
+        emphasis = np.array([example.emphasis for example in self.examples])
+        loss = float(emphasis @ (log_free - log_bound)) + self.penalty / 2 * float(vector @ vector)
+        gradient: dict[str, Array] = {term: np.zeros(len(names)) for term, names in TERMS.items()}
+        for piece, scorer in enumerate(scorers):
+            count = scorer.evidence.count
+            shares = shares_free[piece, :count] - shares_bound[piece, :count]
+            shares *= np.float32(emphasis[piece])
+            add_segment_gradient(gradient, scorer, shares)
+            moves = emphasis[piece] * (moves_free[piece] - moves_bound[piece])
+            add_motion_gradient(gradient, moves)
+        return loss, pack(Weights(gradient)) + self.penalty * vector
+
+
+def by_degree(table: Array, places: int) -> Array:
+    """Sum a (12, 120) gradient into degrees."""
+    return np.bincount(DEGREE_OF.ravel(), table.ravel(), NON_CHORD + 1)[:places]
+
+
+def covering(shares: Array) -> Array:
+    """Spread segment values (n, 16, 120) over the slices they cover, shape (n, 120)."""
+    count = len(shares)
+    change = np.zeros((count + 1, STATES))
+    change[:count] += shares.sum(axis=1)
+    for span in range(1, min(MAX_SPAN, count) + 1):
+        change[span:] -= shares[: count + 1 - span, span - 1]
+    return np.asarray(np.cumsum(change[:-1], axis=0))
+
+
+def add_segment_gradient(
+    gradient: dict[str, Array], scorer: SegmentScorer, shares: NDArray[np.float32]
+) -> None:
+    """Carry d loss / d segment score back to the weights: `make_scorer` transposed."""
+    evidence = scorer.evidence
+    count = evidence.count
+    starts = shares.sum(axis=1, dtype=np.float64)
+    ends = np.zeros((count, STATES))
+    for span in range(1, min(MAX_SPAN, count) + 1):
+        ends[span - 1 :] += shares[: count + 1 - span, span - 1]
+    upto = np.minimum(np.arange(count)[:, None] + np.arange(1, MAX_SPAN + 1), count)
+    lasted = evidence.time[upto] - evidence.time[:count, None]
+    cover = covering(shares)
+    rate = covering(shares / lasted.astype(np.float32)[:, :, None])
+    gradient["duration"] += by_degree(evidence.held.T @ cover, 4)
+    gradient["count"] += by_degree(evidence.begun.T @ cover, 4)
+    nonchord = cover @ (DEGREE_OF == NON_CHORD).T
+    cells = nonchord.ravel()[evidence.cells]
+    approaches = evidence.approaches
+    begin = evidence.beginning
+    places = len(TERMS["nonchord_count"])
+    gradient["nonchord_count"] += np.bincount(approaches[begin], cells[begin], places)
+    lengths = evidence.length[evidence.cells // ROOTS]
+    gradient["nonchord_duration"] += np.bincount(approaches, cells * lengths, places)
+    sounding = evidence.sounding * evidence.length[:, None]
+    gradient["coverage"] += by_degree(sounding.T @ rate, 5)
+    heard = scorer.heard(0, count).reshape(-1, ROOTS)
+    gradient["missing"] += by_degree((1 - heard).T @ shares.reshape(-1, STATES), 4)
+    loud = evidence.bass >= 0
+    for term, rows in (("first_bass", starts), ("last_bass", ends)):
+        table = np.zeros((ROOTS, STATES))
+        np.add.at(table, evidence.bass[loud], rows[loud])
+        gradient[term] += by_degree(table, 5)
+    begun = starts.sum(axis=1)
+    gradient["start_level"] += np.bincount(evidence.level[:-1], begun, 5)
+    gradient["attack"] += begun @ evidence.attack
+    gradient["quality"] += np.bincount(QUALITY_OF, starts.sum(axis=0), len(QUALITIES))
+    gradient["crossed_level"] += np.bincount(
+        scorer.strongest(0, count).ravel(), shares.sum(axis=2, dtype=np.float64).ravel(), 5
+    )
+
+
+def add_motion_gradient(gradient: dict[str, Array], moves: Array) -> None:
+    """`motion_scores` transposed."""
+    interval = (np.arange(ROOTS)[None, :] - ROOT_OF[:, None]) % ROOTS
+    kind = CLASS_OF[QUALITY_OF][:, None] + np.zeros((1, ROOTS), dtype=np.int64)
+    for place, term in enumerate(("motion", "motion_after_dominant", "motion_after_diminished")):
+        rows = np.ones_like(kind, dtype=bool) if place == 0 else kind == place
+        gradient[term] += np.bincount(interval[rows], moves[rows], ROOTS)
+
+
+def bounds() -> list[tuple[float | None, float | None]]:
+    """Limits of every weight, in the order of `pack`."""
+    return [
+        BOUNDS.get((term, name), (None, None)) for term, names in TERMS.items() for name in names
+    ]
+
+
+def fit(
+    examples: list[Example], start: Array, iterations: int = 100, penalty: float = PENALTY
+) -> Array:
+    """Weights that minimise the objective; L-BFGS-B from a starting point."""
+    limits = bounds()
+    low = np.array([-np.inf if a is None else a for a, _ in limits])
+    high = np.array([np.inf if b is None else b for _, b in limits])
+    found = minimize(
+        Objective(examples, penalty),
+        np.clip(start, low, high),
+        jac=True,
+        method="L-BFGS-B",
+        bounds=limits,
+        options={"maxiter": iterations, "maxcor": 20},
+    )
+    return np.asarray(found.x)
+
+
+def example_of(evidence: Evidence, labels: list[Label], emphasis: float) -> Example:
+    """A piece to learn from; labels that the notes contradict teach nothing."""
+    wrong = np.zeros((evidence.count, ROOTS))
+    for label in labels:
+        shared = list(roots.slices_in(label, evidence.time))
+        sounding = {int(tone) for i, _ in shared for tone in np.flatnonzero(evidence.sounding[i])}
+        if roots.is_supported(label, sounding):
+            for index, quarters in shared:
+                wrong[index] += quarters
+                wrong[index, label.root] -= quarters
+    # A label that changes inside a slice must leave one root that is right there.
+    return Example(evidence, wrong - wrong.min(axis=1, keepdims=True), emphasis)
+
+
+def as_data(vector: Array) -> dict[str, dict[str, float]]:
+    """Weights by name, to two decimals, zeros left out."""
+    weights = unpack(vector)
+    return {
+        term: {
+            name: round(float(value), 2)
+            for name, value in zip(names, weights[term], strict=True)
+            if abs(value) >= 0.005
+        }
+        for term, names in TERMS.items()
+    }
+
+
+def agreement(vector: Array, pieces: list[Piece], read: dict[str, Read]) -> dict[str, roots.Tally]:
+    """Tallies by group of an analysis with other weights than the shipped ones."""
+    groups: dict[str, roots.Tally] = {}
+    weights = unpack(vector)
+    for piece in pieces:
+        score, labels = read[piece.name]
+        tally = roots.judge(score, analyse_with(score, weights), labels)
+        groups.setdefault(piece.group, roots.Tally()).add(tally)
+    return groups
+
+
+def report(title: str, groups: dict[str, roots.Tally]) -> None:
+    """Print the figures of both groups."""
+    for group, tally in groups.items():
+        figures = tally.figures()
+        names = ("root", "supported", "quality")
+        print(f"{title:12} {group:10}", *(f"{name} {figures[name]:.4f}" for name in names))
+
+
+def main() -> None:
+    """Fit, or cross-validate."""
+    parser = argparse.ArgumentParser(description=__doc__.splitlines()[0])
+    parser.add_argument("--folds", type=int, default=0, help="cross-validate, writing nothing")
+    parser.add_argument("--iterations", type=int, default=100)
+    parser.add_argument("--penalty", type=float, default=PENALTY)
+    wish = parser.parse_args()
+    pieces = corpus.development()
+    read = {piece.name: roots.read_piece(piece) for piece in pieces}
+    examples = {}
+    for piece in pieces:
+        score, labels = read[piece.name]
+        evidence = gather_evidence(score, make_timeline(score))
+        examples[piece.name] = example_of(evidence, labels, EMPHASIS[piece.group])
+    start = np.zeros(sum(map(len, TERMS.values())))
+    pooled: dict[str, roots.Tally] = {}
+    for fold in range(wish.folds):
+        kept = [examples[piece.name] for i, piece in enumerate(pieces) if i % wish.folds != fold]
+        found = fit(kept, start, wish.iterations, wish.penalty)
+        groups = agreement(found, pieces[fold :: wish.folds], read)
+        report(f"fold {fold + 1}", groups)
+        for group, tally in groups.items():
+            pooled.setdefault(group, roots.Tally()).add(tally)
+    if wish.folds:
+        report("all folds", pooled)
+        return
+    found = fit(list(examples.values()), start, wish.iterations, wish.penalty)
+    report("fitted", agreement(found, pieces, read))
+    WEIGHTS.write_text(json.dumps({"origin": ORIGIN, **as_data(found)}, indent=1) + "\n", "utf-8")
+
+
+if __name__ == "__main__":
+    main()
