@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import sys
 from pathlib import Path
 from typing import TYPE_CHECKING
 
@@ -84,7 +85,7 @@ def command(
                 f"standard output takes one file, and this makes {len(files)}",
                 hint="Choose one output with a single file, such as --to midi, or give a folder",
             )
-        stdout = click.get_binary_stream("stdout")
+        stdout = sys.stdout.buffer
         stdout.write(files[0].data)
         stdout.flush()
         report = None

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import functools
+import sys
 from collections.abc import Callable
 from pathlib import Path
 from typing import Any, TypeVar
@@ -96,6 +97,7 @@ def _stacked(*decorators: Callable[[Command], Command]) -> Callable[[Command], C
     """Apply click options so that help lists them in this order."""
 
     def apply(command: Command) -> Command:
+        """The command with all of them."""
         for decorator in reversed(decorators):
             command = decorator(command)
         return command
@@ -296,7 +298,7 @@ talk_options = _stacked(
 def source_of(score: Path) -> tuple[Path | bytes, str]:
     """What to read, and its name in messages: a path, or the bytes of standard input."""
     if str(score) == "-":
-        return click.get_binary_stream("stdin").read(), STDIN_NAME
+        return sys.stdin.buffer.read(), STDIN_NAME
     return score, str(score)
 
 

@@ -174,13 +174,11 @@ def test_full_disk_leaves_nothing(
 def test_interrupt_cleans_up(hymn: Path, tmp_path: Path, sign: signal.Signals) -> None:
     """The process is stopped in the middle of writing: files staged, none renamed."""
     script = (
-        "import sys, time, pathlib, retune.adapters.disk\n"
-        "import os\n"
-        "real = os.replace\n"
-        "def slow(*a, **k):\n"
+        "import sys, time, pathlib\n"
+        "def slow(self, target):\n"
         "    pathlib.Path(sys.argv[2]).touch()\n"
         "    time.sleep(30)\n"
-        "os.replace = slow\n"
+        "pathlib.Path.rename = slow\n"
         "from retune.cli import main\n"
         "main(['make', sys.argv[1], '-o', sys.argv[3]])\n"
     )

@@ -29,7 +29,8 @@ def test_make_writes_the_folder_of_the_design(run: Run, score: Path, tmp_path: P
         f"tables/{name}.kbm",
         f"tables/{name}.tables.csv",
     } <= files
-    assert all(len(line) <= 80 for line in done.err.splitlines())
+    lines = [line for line in done.err.splitlines() if not line.startswith("Wrote")]
+    assert max(len(line) for line in lines) <= 80
 
 
 def test_make_without_o_writes_beside_the_score(run: Run, hymn: Path, tmp_path: Path) -> None:
