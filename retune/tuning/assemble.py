@@ -54,7 +54,8 @@ def _chord_means(layout: Layout, chosen: Flags, values: Floats, count: int) -> F
     weight = np.where(chosen, layout.length, 0.0)
     total = np.bincount(layout.chord, weight, minlength=count)
     summed = np.bincount(layout.chord, weight * values, minlength=count)
-    return np.divide(summed, total, out=np.full(count, np.nan), where=total > 0.0)
+    means: Floats = np.divide(summed, total, out=np.full(count, np.nan), where=total > 0.0)
+    return means
 
 
 @dataclass(frozen=True)
@@ -129,7 +130,7 @@ class Assembler:
         if template is None or template.ratios is None or root is None:
             return None
         if layout.degree[piece] >= 0:
-            return template.ratios[layout.degree[piece]]
+            return template.ratios[int(layout.degree[piece])]
         spelled = int(layout.fifths[piece]) - self._root(chord).fifths
         return _nearest_ratio(spelled, float(self.x[piece]) - root, self.limit)
 

@@ -13,6 +13,7 @@ from typing import Any
 import numpy as np
 
 from retune.harmony.model import Harmony
+from retune.pitch import PitchClass
 from retune.score.model import Score
 from retune.tuning.intervals import CONSONANT, Floats, consonances, nearest, steps
 from retune.tuning.layout import Layout
@@ -116,13 +117,14 @@ def melody(layout: Layout, x: Floats, limit: int) -> dict[str, Any]:
 
 
 def drift(
-    score: Score, harmony: Harmony, home: list[int], roots: tuple[float | None, ...]
+    score: Score, harmony: Harmony, tonic: PitchClass, roots: tuple[float | None, ...]
 ) -> dict[str, Any]:
-    """Movement of the home tonic: its chords' roots against the first of them.
-
-    `home` lists the chords on the home tonic.
-    """
-    known = [(index, cents) for index in home if (cents := roots[index]) is not None]
+    """Movement of the home tonic: the roots of its chords against the first of them."""
+    known = [
+        (chord.index, cents)
+        for chord, cents in zip(harmony.chords, roots, strict=True)
+        if chord.root == tonic and cents is not None
+    ]
     moved = [(abs(cents - known[0][1]), cents - known[0][1], index) for index, cents in known]
     size, signed, where = max(moved, default=(0.0, 0.0, -1), key=lambda one: one[0])
     return {

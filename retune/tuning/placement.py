@@ -38,13 +38,20 @@ _PASSES = 3
 class Problem:
     """What the solve needs to know.
 
-    `fixed` gives every piece's cents in the tuning of the parts that cannot move, and
-    `fixed_root` those of its chord's root; `lead` is the index of the part kept smoothest.
+    Parameters
+    ----------
+    start : ndarray, shape (pieces,)
+        Where the search for the nearest just steps begins, in cents.
+    fixed, fixed_root : ndarray, shape (pieces,)
+        Each piece's cents, and its chord's root's, in the tuning of the parts that cannot move.
+    lead : int or None
+        Index of the part kept smoothest.
     """
 
     layout: Layout
     targets: Targets
     policy: Policy
+    start: Floats
     fixed: Floats
     fixed_root: Floats
     lead: int | None = None
@@ -141,7 +148,7 @@ def capped(layout: Layout, x: Floats, cap: float) -> Floats:
 def place(problem: Problem) -> Floats:
     """The tuned cents of every piece, shape (pieces,)."""
     layout, policy = problem.layout, problem.policy
-    x = np.where(layout.tuned, problem.targets.place, problem.fixed)
+    x = np.where(layout.tuned, problem.start, problem.fixed)
     if not layout.tuned.any():
         return x
     unknown = np.cumsum(layout.tuned) - 1

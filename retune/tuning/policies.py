@@ -32,6 +32,8 @@ class Weights:
     pure_share : float
         Share of a chord-tone pair's weight drawn to the pure consonance where its template
         gives a wolf, such as 32/27 for a minor third.
+    wolf : float
+        Times `chord` for a template's own impure consonances, when templates are chosen.
     other, clash : float
         A pair with a non-chord tone, consonant or dissonant, times `chord`.
     held : float
@@ -58,15 +60,16 @@ class Weights:
     triad: float = 2.0
     dissonant: float = 0.2
     pure_share: float = 0.5
-    other: float = 0.3
+    wolf: float = 0.1
+    other: float = 0.6
     clash: float = 0.02
     held: float = 1.0
     melodic: float = 0.1
     repeated: float = 3.0
     lead: float = 10.0
     lone: float = 5.0
-    anchor: float = 0.3
-    tonic: float = 1.0
+    anchor: float = 0.05
+    tonic: float = 15.0
     start: float = 0.0
     bridge: float = 0.1
     fixed: float = 3.0

@@ -132,8 +132,7 @@ def _reduced(diagonal: Floats, upper: Floats, rhs: Floats) -> Floats:
     """
     count, size = rhs.shape[:2]
     if count == 1:
-        alone: Floats = np.linalg.solve(diagonal, rhs)
-        return alone
+        return np.linalg.solve(diagonal, rhs).astype(np.float64)
     before = upper[0::2]  # even i to odd i + 1
     after = upper[1::2]  # odd i to even i + 1
     odd = count // 2

@@ -29,6 +29,8 @@ class Targets:
     Parameters
     ----------
     templates : tuple of Template or None, one for each chord
+    roots : ndarray, shape (chords,)
+        Where each chord's root would stand in the home scale, in cents.
     just, place : ndarray, shape (pieces,)
     tone : ndarray of bool, shape (pieces,)
         Chord tones that sound with something else.
@@ -37,6 +39,7 @@ class Targets:
     """
 
     templates: tuple[Template | None, ...]
+    roots: Floats
     just: Floats
     place: Floats
     tone: Flags
@@ -86,6 +89,7 @@ def aim(
     home = np.array([chord.root == tonic for chord in harmony.chords], dtype=bool)
     return Targets(
         templates=templates,
+        roots=roots,
         just=np.where(tone, just, 0.0),
         place=np.where(tone, just + roots[layout.chord], own),
         tone=tone,

@@ -10,12 +10,13 @@ from retune.pitch import PitchClass
 from retune.score.model import Score
 from retune.tuning import figures
 from retune.tuning.assemble import Assembler, root_cents
-from retune.tuning.choose import choose
+from retune.tuning.choose import choose, options_of, preferred
 from retune.tuning.fixed import CentsOf, accompaniment, temperament
 from retune.tuning.intervals import Floats
 from retune.tuning.layout import Layout, lay_out
 from retune.tuning.model import TunedScore
 from retune.tuning.placement import Problem, place
+from retune.tuning.policies import WEIGHTS
 from retune.tuning.policy import Policy
 from retune.tuning.ratios import scale_cents
 from retune.tuning.targets import Targets, aim
@@ -39,22 +40,27 @@ def tune(score: Score, harmony: Harmony, policy: Policy) -> TunedScore:
     lead = _lead(score, policy.melody)
     tonic = policy.tonic or harmony.tonic.root
     layout = lay_out(score, harmony)
-    chosen = choose(score, harmony, policy.prime_limit)
-    targets = aim(layout, harmony, chosen, tonic, policy.prime_limit)
+    limit = policy.prime_limit
+    options = options_of(score, harmony, limit)
+    targets = aim(layout, harmony, preferred(options), tonic, limit)
     tempered = temperament(policy.temperament, tonic)
     unmoving = accompaniment(policy.accompaniment_tuning, tonic)
 
     fixed = _piece_cents(score, layout, unmoving)
     if tempered is None:
+        home = np.array([chord.root == tonic for chord in harmony.chords], dtype=bool)
+        weights = WEIGHTS[policy.drift]
+        choice = choose(layout, options, targets.roots, home, weights, limit, policy.held_shift)
+        targets = aim(layout, harmony, choice.templates, tonic, limit)
+        start = targets.place + (choice.roots - targets.roots)[layout.chord]
         root = np.array([unmoving(c.root) if c.root else 0.0 for c in harmony.chords])
-        x = place(Problem(layout, targets, policy, fixed, root[layout.chord], lead))
+        x = place(Problem(layout, targets, policy, start, fixed, root[layout.chord], lead))
     else:
         x = np.where(layout.tuned, _piece_cents(score, layout, tempered), fixed)
     scale = tempered or _home_scale(tonic, policy.prime_limit)
     roots = root_cents(layout, harmony, targets, x, scale)
-    limit, just = policy.prime_limit, tempered is None
+    just = tempered is None
     assembler = Assembler(score, harmony, layout, targets, x, roots, limit, just)
-    home = [chord.index for chord in harmony.chords if chord.root == tonic]
     return TunedScore(
         score=score,
         harmony=harmony,
@@ -65,7 +71,7 @@ def tune(score: Score, harmony: Harmony, policy: Policy) -> TunedScore:
             "purity": figures.purity(layout, targets, x, limit),
             "held_shift": figures.held_shift(score, harmony, layout, x),
             "melody": figures.melody(layout, x, limit),
-            "drift": figures.drift(score, harmony, home, roots),
+            "drift": figures.drift(score, harmony, tonic, roots),
         },
         findings=_findings(targets),
     )
