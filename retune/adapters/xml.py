@@ -16,6 +16,7 @@ import zlib
 from collections.abc import Iterator
 from dataclasses import dataclass
 from io import BytesIO
+from itertools import islice
 from pathlib import PurePosixPath
 from typing import Protocol
 
@@ -26,6 +27,8 @@ from retune.limits import Limits
 
 CONTAINER = "META-INF/container.xml"
 _MAX_CONTAINER_BYTES = 1 << 20
+_MAX_MEMBERS = 10_000
+_MAX_ENTITIES = 10_000
 _SCORE_SUFFIXES = (".musicxml", ".xml")
 
 _EXPORT_AGAIN = "Export the score again as MusicXML from the notation program"
@@ -188,7 +191,13 @@ def _settle_foreign_entities(root: etree._Element) -> None:
 
     They parse where a document type is named that could declare them; it is never loaded.
     """
-    for entity in list(root.iter(etree.Entity)):
+    entities = list(islice(root.iter(etree.Entity), _MAX_ENTITIES + 1))
+    if len(entities) > _MAX_ENTITIES:
+        raise UnreadableError(
+            "the file is full of characters that only a document type could explain",
+            hint=_EXPORT_AGAIN,
+        )
+    for entity in entities:
         parent, before = entity.getparent(), entity.getprevious()
         text = html.unescape(entity.text) + (entity.tail or "")
         if before is None:
@@ -212,6 +221,10 @@ def _drop_namespaces(root: etree._Element) -> None:
 
 def _score_in_archive(data: bytes, limits: Limits) -> tuple[bytes, tuple[Finding, ...]]:
     """The bytes of the score in an .mxl archive: the first rootfile of its container."""
+    if data.count(b"PK\1\2") > _MAX_MEMBERS:
+        raise UnreadableError(
+            f"the archive holds more than {_MAX_MEMBERS} files", hint=_EXPORT_AGAIN
+        )
     try:
         with zipfile.ZipFile(BytesIO(data)) as archive:
             name, findings = _score_name(archive)

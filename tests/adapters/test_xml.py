@@ -107,6 +107,12 @@ def test_the_usual_document_type_is_not_loaded(tmp_path: Path) -> None:
     assert [child.tag for child in root] == ["b"]
 
 
+def test_a_flood_of_undeclared_characters_is_refused() -> None:
+    flood = b'<!DOCTYPE a SYSTEM "x.dtd"><a>' + b"&nbsp;" * 20_000 + b"</a>"
+    with pytest.raises(UnreadableError):
+        read_document(flood, Limits())
+
+
 def test_comments_instructions_and_namespaces_are_gone() -> None:
     data = b"<m:a xmlns:m='urn:x'><!-- c --><?pi x?><m:b>4<!-- d -->2</m:b><x:b xmlns:x='y'/></m:a>"
     root = read_document(data, Limits()).root
@@ -231,6 +237,11 @@ def test_a_bomb_is_stopped_by_the_bytes_it_really_unpacks() -> None:
     big_container = archive({CONTAINER: b" " * 5_000_000})
     with pytest.raises(RetuneError):
         read_document(big_container, Limits())
+
+
+def test_an_archive_of_very_many_files_is_refused() -> None:
+    with pytest.raises(UnreadableError, match="more than 10000 files"):
+        read_document(archive({f"{n}.xml": "" for n in range(10_001)}), Limits())
 
 
 def test_an_encrypted_archive_is_refused() -> None:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from fractions import Fraction
+from time import perf_counter
 
 import pytest
 
@@ -236,6 +237,14 @@ def test_an_ornament_played_out_in_hidden_notes_is_left_out() -> None:
     assert score.findings[0].weight is Weight.NOTE
 
 
+def test_hidden_notes_by_the_thousand_take_no_time() -> None:
+    hidden = note("C4", 1, "<voice>2</voice>", 'print-object="no"') * 8000
+    start = perf_counter()
+    bar = read_bar(note("C4", 1) * 8000 + "<backup><duration>8000</duration></backup>" + hidden)
+    assert len(bar.notes) == 8000
+    assert perf_counter() - start < 5
+
+
 def test_other_hidden_notes_sound_and_are_named() -> None:
     score = read(note("C4", 4) + note("D4", 4, "", 'print-object="no"'))
     assert placed(score.parts[0].bars[0]) == [(0, "C4", 1), (1, "D4", 1)]
@@ -335,6 +344,15 @@ def test_limits_hold() -> None:
     with pytest.raises(LimitError, match="more than 100 bytes"):
         read_musicxml(text, Limits(max_bytes=100))
     assert read_musicxml(text, Limits(max_notes=11))
+
+
+def test_bars_are_limited_even_where_they_are_empty() -> None:
+    text = score_text(part_text(note()).replace("</part>", "<measure/>" * 500_000 + "</part>"))
+    with pytest.raises(LimitError, match="500000 bars"):
+        read_musicxml(text, Limits())
+    parts = "".join(f'<measure><part id="P{n}"/></measure>' for n in range(800))
+    with pytest.raises(LimitError, match="500000 bars"):
+        read_musicxml(f"<score-timewise>{parts}</score-timewise>".encode(), Limits())
 
 
 def test_findings_met_too_often_are_counted() -> None:

@@ -226,6 +226,14 @@ def test_of_bare_coda_signs_only_the_last_is_the_coda() -> None:
     assert len(score.findings) == 1
 
 
+def test_a_segno_at_the_end_of_a_bar_means_the_next_bar() -> None:
+    part = read_part(note() + direction("<segno/>"), note())
+    assert [[(m.kind, m.onset) for m in bar.marks] for bar in part.bars] == [
+        [],
+        [(MarkKind.SEGNO, 0)],
+    ]
+
+
 # --- bar lines ----------------------------------------------------------------------------
 
 

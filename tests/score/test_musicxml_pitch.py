@@ -11,7 +11,7 @@ from retune.errors import Weight
 from retune.limits import Limits
 from retune.score.musicxml import read_musicxml
 from retune.score.musicxml.transposition import Transposition, interval
-from retune.written import WrittenBar
+from retune.written import WrittenBar, WrittenChordSymbol
 from tests.score.musicxml_text import (
     attributes,
     note,
@@ -110,6 +110,8 @@ def test_a_doubled_part_sounds_at_both_octaves() -> None:
     bar = score.parts[0].bars[0]
     assert names(bar) == ["C4", "C3"]
     assert len({n.source for n in bar.notes}) == 2
+    lowest = read_bar(attributes(double) + note("C4").replace("<octave>4", "<octave>-1"))
+    assert names(lowest) == ["C-1"]
     above = double.replace("<double/>", '<double above="yes"/>')
     assert names(read_bar(attributes(above) + note("C4"))) == ["C4", "C5"]
 
@@ -253,4 +255,5 @@ def test_chord_symbols_sound_too() -> None:
     harmony = "<harmony><root><root-step>C</root-step></root><kind>major</kind></harmony>"
     text = score_text(part_text(attributes(transpose("-2", "-1")) + harmony + note("C5")))
     mark = read_musicxml(text, Limits()).parts[0].bars[0].marks[0]
-    assert mark.value.root.name == "Bb"  # type: ignore[union-attr]  # the mark's kind says so
+    assert isinstance(mark.value, WrittenChordSymbol)
+    assert mark.value.root.name == "Bb"

@@ -14,20 +14,18 @@ from retune.adapters.xml import Element
 from retune.errors import Weight
 from retune.score.musicxml.draft import ZERO, BarDraft, Jump
 from retune.score.musicxml.jumps import BY_SIGN
-from retune.score.musicxml.values import whole, words
+from retune.score.musicxml.values import MAX_LABEL, whole, words
 from retune.written import MarkKind
 
 _MOST_TIMES = 999
 _PASSES = re.compile(r"([0-9]{1,3})(?:\s*[-–]\s*([0-9]{1,3}))?")
-
-
 _SIGNS = {"segno": MarkKind.SEGNO, "coda": MarkKind.CODA}
 
 
 def read_barline(element: Element, bar: BarDraft) -> None:
     """Read a <barline> element into the bar."""
     location = element.get("location") or "right"
-    onset = ZERO if location == "left" else bar.now
+    onset = {"left": ZERO, "middle": bar.now}.get(location, bar.reach)
     for child in element:
         if child.tag == "repeat":
             _repeat(child, location, bar)
@@ -46,6 +44,8 @@ def _repeat(element: Element, location: str, bar: BarDraft) -> None:
             Weight.DOUBT, "a repeat sign inside a bar is read as standing at the end of the bar"
         )
     direction = element.get("direction")
+    if direction == "forward":
+        bar.part.last_pass = 0
     if direction == "forward" and at_start:
         bar.repeat_start = True
     elif direction == "forward":
@@ -76,7 +76,7 @@ def _ending(element: Element, location: str, bar: BarDraft) -> None:
 
 def _passes(element: Element, bar: BarDraft) -> tuple[int, ...]:
     """Passes of an ending, "1,2" or "1-3"; where none are given, the next after the last."""
-    for text in (element.get("number") or "", words(element)):
+    for text in ((element.get("number") or "")[:MAX_LABEL], words(element)[:MAX_LABEL]):
         found = _PASSES.findall(text)
         passes = {
             number

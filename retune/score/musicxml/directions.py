@@ -16,7 +16,7 @@ from retune.score.musicxml.jumps import (
 )
 from retune.score.musicxml.placing import Place, placed
 from retune.score.musicxml.tempo import read_metronome, within_reason
-from retune.score.musicxml.values import decimal, velocity, words
+from retune.score.musicxml.values import MAX_TEXT, decimal, velocity, words
 from retune.written import MarkKind
 
 # Dynamics of one moment; a velocity beside them does not hold for what follows.
@@ -36,7 +36,7 @@ def read_direction(element: Element, bar: BarDraft) -> None:
     for kinds in element.iterchildren("direction-type"):
         for child in kinds:
             if child.tag == "words":
-                texts.append(child.text or "")
+                texts.append(words(child))
             elif child.tag == "dynamics":
                 _dynamics(child, sound, place, bar)
             else:
@@ -55,7 +55,7 @@ def read_sound(element: Element, bar: BarDraft) -> None:
 
 def _words(texts: list[str], place: Place, bar: BarDraft) -> None:
     """All words of a direction together: "D.C." and "al Fine" may stand in two elements."""
-    text = " ".join(" ".join(texts).split())
+    text = " ".join(filter(None, texts))[:MAX_TEXT]
     if not text:
         return
     bar.mark(MarkKind.WORDS, place.onset, text, place.staff, place.voice)

@@ -40,7 +40,7 @@ class Slot:
     voice: str
 
 
-@dataclass
+@dataclass(slots=True)
 class PartState:
     """What carries over from one bar of a part to the next."""
 
@@ -88,7 +88,7 @@ class Jump:
     value: str | None = None
 
 
-@dataclass
+@dataclass(slots=True)
 class BarDraft:
     """One bar while it is read; times in quarter notes from its start.
 

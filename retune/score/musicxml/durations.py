@@ -59,7 +59,9 @@ def note_duration(element: Element, fields: Fields, bar: BarDraft) -> Fraction:
         return _without_duration(element, fields, bar)
     if "type" in fields and "rest" not in fields and not _fits(element, fields, length, bar.part):
         bar.remark(
-            Weight.DOUBT, "a duration does not fit the printed note value; the duration is used"
+            Weight.DOUBT,
+            "a duration does not fit the printed note value; the duration is used",
+            bar.chord.onset if "chord" in fields and bar.chord is not None else bar.now,
         )
     return length
 

@@ -7,6 +7,11 @@ and so are the others of the same voice while that note lasts.
 
 from __future__ import annotations
 
+from bisect import bisect_left, bisect_right
+from collections.abc import Iterable
+from fractions import Fraction
+from itertools import accumulate
+
 from retune.errors import Weight
 from retune.score.musicxml.draft import BarDraft
 from retune.written import WrittenNote
@@ -24,9 +29,9 @@ def settle_hidden(bar: BarDraft) -> None:
             lines.setdefault((note.staff, note.voice), []).append(note)
     dropped: set[str] = set()
     for line in lines.values():
-        doubled = [note for note in printed if any(_is_twin(other, note) for other in line)]
+        doubled = _Spans(_doubled(printed, line))
         for note in line:
-            if any(_starts_within(note, other) for other in doubled):
+            if note.onset in doubled:
                 dropped.add(note.source)
             else:
                 bar.remark(Weight.DOUBT, "a note that is not printed sounds", note.onset)
@@ -35,10 +40,33 @@ def settle_hidden(bar: BarDraft) -> None:
         bar.notes = [note for note in bar.notes if note.source not in dropped]
 
 
-def _is_twin(hidden: WrittenNote, printed: WrittenNote) -> bool:
-    return hidden.pitch.key == printed.pitch.key and _starts_within(hidden, printed)
+def _doubled(printed: list[WrittenNote], line: list[WrittenNote]) -> list[WrittenNote]:
+    """The printed notes that a note of a hidden line repeats at their pitch while they last."""
+    onsets: dict[int, list[Fraction]] = {}
+    for note in sorted(line, key=lambda note: note.onset):
+        onsets.setdefault(note.pitch.key, []).append(note.onset)
+    found: list[WrittenNote] = []
+    for note in printed:
+        same = onsets.get(note.pitch.key, [])
+        place = bisect_left(same, note.onset)
+        if place < len(same) and _reaches(note.onset, note.onset + note.duration, same[place]):
+            found.append(note)
+    return found
 
 
-def _starts_within(note: WrittenNote, other: WrittenNote) -> bool:
-    end = other.onset + other.duration
-    return other.onset <= note.onset < end or other.onset == note.onset
+def _reaches(start: Fraction, end: Fraction, onset: Fraction) -> bool:
+    """Whether a note sounds at an onset not before its own; a grace note does at its own."""
+    return onset < end or onset == start
+
+
+class _Spans:
+    """The times that some notes cover."""
+
+    def __init__(self, notes: Iterable[WrittenNote]) -> None:
+        spans = sorted((note.onset, note.onset + note.duration) for note in notes)
+        self._starts = [start for start, _ in spans]
+        self._ends = list(accumulate((end for _, end in spans), max))
+
+    def __contains__(self, onset: Fraction) -> bool:
+        place = bisect_right(self._starts, onset) - 1
+        return place >= 0 and _reaches(self._starts[place], self._ends[place], onset)

@@ -2,14 +2,18 @@
 
 from __future__ import annotations
 
+from collections import deque
 from dataclasses import dataclass
 from typing import TypeAlias
 
 from retune.adapters.xml import Element
-from retune.errors import Place, UnreadableError, Weight
+from retune.errors import LimitError, Place, UnreadableError, Weight
 from retune.score.musicxml.identity import Identities
 from retune.score.musicxml.log import Log
-from retune.score.musicxml.partlist import Heading, read_part_list
+from retune.score.musicxml.partlist import Heading, identity_of, read_part_list
+
+MAX_BARS = 500_000
+"""Bars over all parts; each costs memory even where it is empty."""
 
 _EXPORT = "Export the score as MusicXML from the notation program"
 
@@ -46,6 +50,7 @@ def read_layout(root: Element, log: Log) -> tuple[PartSource, ...]:
         raise _not_a_score(str(root.tag))
     if not music:
         raise UnreadableError("the score has no parts", hint=_EXPORT)
+    _check_bars(sum(len(bars) for _, bars in music))
     if not any(bars for _, bars in music):
         raise UnreadableError("the score has no bars", hint=_EXPORT)
     return _headed(music, read_part_list(root.find("part-list")), log)
@@ -81,7 +86,7 @@ _Music: TypeAlias = list[tuple[str, tuple[BarSource, ...]]]
 def _by_part(root: Element) -> _Music:
     return [
         (
-            (part.get("id") or "").strip(),
+            identity_of(part),
             tuple(BarSource(bar, bar) for bar in part.iterchildren("measure")),
         )
         for part in root.iterchildren("part")
@@ -97,24 +102,33 @@ def _by_time(root: Element) -> _Music:
         (
             frame,
             {
-                (body.get("id") or "").strip() or f"#{index + 1}": body
+                identity_of(body) or f"#{index + 1}": body
                 for index, body in enumerate(frame.iterchildren("part"))
             },
         )
         for frame in root.iterchildren("measure")
     ]
     names = dict.fromkeys(name for _, bodies in frames for name in bodies)
+    _check_bars(len(names) * len(frames))
     return [
         (name, tuple(BarSource(frame, bodies.get(name, frame)) for frame, bodies in frames))
         for name in names
     ]
 
 
+def _check_bars(count: int) -> None:
+    if count > MAX_BARS:
+        raise LimitError(
+            f"the score has more than {MAX_BARS} bars, counted over all its parts",
+            hint="Split it into movements",
+        )
+
+
 def _headed(music: _Music, headings: list[Heading], log: Log) -> tuple[PartSource, ...]:
     """Join music and part list by id, nameless music to unclaimed entries in order."""
     listed = {heading.id: heading for heading in reversed(headings)}
     present = {name for name, _ in music}
-    unclaimed = [heading for heading in headings if heading.id not in present]
+    unclaimed = deque(heading for heading in headings if heading.id not in present)
     order = {heading.id: index for index, heading in enumerate(headings)}
     found: list[tuple[int, PartSource]] = []
     taken: set[str] = set()
@@ -122,14 +136,15 @@ def _headed(music: _Music, headings: list[Heading], log: Log) -> tuple[PartSourc
         if name in listed:
             heading = listed[name]
         elif (not name or name.startswith("#")) and unclaimed:
-            heading = unclaimed.pop(0)
+            heading = unclaimed.popleft()
         else:
             heading = Heading(name or f"#{index + 1}", f"Part {index + 1}")
             log.add(Weight.DOUBT, "the part is not in the part list", Place(part=heading.name))
         place = order.get(heading.id, len(headings))
         if heading.id in taken:
-            heading = heading.again(index + 1)
             log.add(Weight.DOUBT, "two parts have one id in the file", Place(part=heading.name))
+        while heading.id in taken:
+            heading = heading.again(index + 1)
         taken.add(heading.id)
         found.append((place, PartSource(heading, bars)))
     for heading in unclaimed:

@@ -6,14 +6,12 @@ import re
 from functools import lru_cache
 
 from retune.adapters.xml import Element
-from retune.score.musicxml.values import MAX_TEXT, words
+from retune.score.musicxml.values import MAX_LABEL, MAX_TEXT, words
 from retune.written import WrittenLyric
 
 UNDERTIE = "\u203f"
 HUMMED = "mm"
 """What is written for a hummed note (common practice, no source)."""
-
-MAX_LABEL = 40
 
 _SYLLABICS = ("single", "begin", "middle", "end")
 _NUMBERED = re.compile(r"(?:.*[^0-9])?0*([1-9][0-9]{0,3})")
@@ -82,8 +80,9 @@ def _verse(number: str, name: str) -> str:
         match = _NUMBERED.fullmatch(label)
         if match is not None:
             return match[1]
-    return number or name if (number or name).lower() not in ("", "verse") else "1"
+    label = number or name
+    return "1" if label.lower() in ("", "verse") else label
 
 
 def _passes(time_only: str | None) -> tuple[int, ...]:
-    return tuple(map(int, _PASS.findall(time_only))) if time_only else ()
+    return tuple(map(int, _PASS.findall(time_only[:MAX_LABEL]))) if time_only else ()

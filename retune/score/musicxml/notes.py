@@ -39,9 +39,9 @@ ACCIDENTALS = {
     "sharp-sharp": 2,
 }
 _TIED = {"start": ("start",), "stop": ("stop",), "continue": ("start", "stop")}
-# What is sung as written although the page or the playback data says otherwise.
 DOUBLED = "+8"
 """What follows the identity of a notehead in that of its octave doubling."""
+# Noteheads that some composers use for speech.
 _CROSSED = ("x", "cross", "circle-x")
 
 
@@ -86,6 +86,7 @@ def _slot(element: Element, fields: Fields, bar: BarDraft) -> Slot:
     staff = whole(fields["staff"].text, 1, MAX_STAVES) if "staff" in fields else None
     voice = words(fields["voice"]) if "voice" in fields else ""
     if chord is not None:
+        bar.reach = max(bar.reach, chord.onset + duration)
         return Slot(chord.onset, duration, staff or chord.staff, voice or chord.voice)
     bar.chord = Slot(bar.now, duration, staff or 1, voice or "1")
     bar.advance(duration)
@@ -147,7 +148,7 @@ def _doubled(note: WrittenNote, octaves: int) -> WrittenNote:
 
 
 def _remark_oddities(element: Element, fields: Fields, slot: Slot, bar: BarDraft) -> None:
-    """Notes that some readers would leave out or speak; they are sung here, and named."""
+    """Name what the page or the playback data might mean otherwise than it is read here."""
     if "notehead" in fields and words(fields["notehead"]) in _CROSSED:
         bar.remark(Weight.DOUBT, "a crossed notehead is read as sung", slot.onset)
     if "accidental" in fields and not _fits_accidental(fields):

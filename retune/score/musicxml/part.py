@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from fractions import Fraction
 from itertools import pairwise
 from typing import TypeVar
@@ -22,7 +22,7 @@ from retune.score.musicxml.jumps import settle_coda_signs, settle_jumps
 from retune.score.musicxml.layout import BarSource, PartSource
 from retune.score.musicxml.log import Log
 from retune.score.musicxml.notes import read_note
-from retune.written import WrittenBar, WrittenPart
+from retune.written import MarkKind, WrittenBar, WrittenPart
 
 _Value = TypeVar("_Value")
 
@@ -101,6 +101,18 @@ def _hand_over(left: BarDraft, right: BarDraft) -> None:
     right.ending = right.ending or left.ending_after
     left.repeat_end = left.repeat_end or right.repeat_ended_before
     left.ending_stop |= right.ending_stopped_before
+    if left.reach > ZERO:
+        # A segno after the last note of a bar is the sign on the line: the next bar is meant.
+        right.jumps += [
+            replace(jump, onset=ZERO)
+            for jump in left.jumps
+            if jump.kind is MarkKind.SEGNO and jump.onset >= left.reach
+        ]
+        left.jumps = [
+            jump
+            for jump in left.jumps
+            if jump.kind is not MarkKind.SEGNO or jump.onset < left.reach
+        ]
     _hand_over_signature(left.metres, right.metres, left.reach)
     _hand_over_signature(left.keys, right.keys, left.reach)
 

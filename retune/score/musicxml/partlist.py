@@ -5,7 +5,9 @@ from __future__ import annotations
 from dataclasses import dataclass, replace
 
 from retune.adapters.xml import Element
-from retune.score.musicxml.values import whole, words
+from retune.score.musicxml.values import MAX_LABEL, whole, words
+
+_MOST_OPEN_GROUPS = 64
 
 
 @dataclass(frozen=True, slots=True)
@@ -37,10 +39,15 @@ def read_part_list(part_list: Element | None) -> list[Heading]:
     return headings
 
 
+def identity_of(element: Element) -> str:
+    """The id of a part or of its entry in the list; "" for none."""
+    return (element.get("id") or "").strip()[:MAX_LABEL]
+
+
 def _turn_group(entry: Element, open_groups: dict[str, str]) -> None:
     number = entry.get("number") or "1"
     open_groups.pop(number, None)
-    if entry.get("type") == "start":
+    if entry.get("type") == "start" and len(open_groups) < _MOST_OPEN_GROUPS:
         open_groups[number] = _name(entry, "group-name")
 
 
@@ -53,7 +60,7 @@ def _heading(entry: Element, number: int, group: str) -> Heading:
     name = _name(entry, "part-name") or printed_instrument or f"Part {number}"
     program = whole(entry.findtext("midi-instrument/midi-program"), 1, 128)
     return Heading(
-        id=(entry.get("id") or "").strip() or f"#{number}",
+        id=identity_of(entry) or f"#{number}",
         name=name,
         abbreviation=_name(entry, "part-abbreviation"),
         instrument=instrument,

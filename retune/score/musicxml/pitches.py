@@ -44,9 +44,16 @@ def _reading(
     nearest = _toward_zero(raised)
     transposition = part.transposition(staff)
     sounding = transposition.pitch(Pitch(letter, nearest, height))
-    if not LOWEST_KEY <= sounding.key <= HIGHEST_KEY:
+    if not _has_key(sounding.key):
         return PitchReading(None, "a note lies outside the keys of MIDI (C-1 to G9)")
-    return PitchReading(sounding, rounded=raised != nearest, doubling=transposition.doubling)
+    doubling = transposition.doubling
+    if not _has_key(sounding.key + 12 * doubling):
+        doubling = 0
+    return PitchReading(sounding, rounded=raised != nearest, doubling=doubling)
+
+
+def _has_key(key: int) -> bool:
+    return LOWEST_KEY <= key <= HIGHEST_KEY
 
 
 def _toward_zero(raised: Fraction) -> int:

@@ -6,7 +6,7 @@ from collections.abc import Iterable
 from fractions import Fraction
 
 from retune.adapters.xml import Element
-from retune.score.musicxml.values import decimal, words
+from retune.score.musicxml.values import MAX_TEXT, decimal, words
 
 _LYRICISTS = ("lyricist", "poet", "librettist", "text")
 
@@ -70,4 +70,4 @@ def _largest_credit(root: Element) -> str:
 
 
 def _joined(texts: Iterable[str], between: str) -> str:
-    return between.join(dict.fromkeys(text for text in texts if text))
+    return between.join(dict.fromkeys(text for text in texts if text))[:MAX_TEXT]

@@ -9,6 +9,8 @@ from functools import lru_cache
 from retune.adapters.xml import Element
 
 MAX_STAVES = 64
+MAX_LABEL = 80
+"""Longest id, number or name of a thing that is looked at, in characters."""
 MAX_TEXT = 1000
 """Longest text that is kept of an element, in characters."""
 
