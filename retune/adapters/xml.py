@@ -146,6 +146,7 @@ def _root(text: bytes, encoding: str | None) -> etree._Element:
         recover=False,
         remove_comments=True,
         remove_pis=True,
+        remove_blank_text=True,
     )
     return etree.fromstring(text, parser)
 

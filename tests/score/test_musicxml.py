@@ -166,6 +166,16 @@ def test_a_missing_duration_is_taken_from_the_printed_value() -> None:
     ]
 
 
+def test_a_rest_of_no_length_is_nothing_and_one_without_is_a_whole_bar() -> None:
+    time = attributes("<time><beats>3</beats><beat-type>4</beat-type></time>")
+    nothing = read(rest(0) + note("D4"))
+    assert nothing.parts[0].bars[0].rests == ()
+    assert not nothing.findings
+    whole = read(time + "<note><rest/></note>", note("D4"))
+    assert whole.parts[0].bars[0].length == 3
+    assert len(whole.findings) == 1
+
+
 def test_a_duration_that_does_not_fit_its_value_is_used_and_named() -> None:
     score = read(note("C4", 4, "<type>half</type>") + note("D4", 4, "<type>quarter</type>"))
     assert score.parts[0].bars[0].notes[1].onset == 1

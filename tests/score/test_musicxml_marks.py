@@ -96,6 +96,9 @@ def test_played_and_printed_tempo_of_one_place_count_once() -> None:
     score = read(direction(printed) + '<sound tempo="120"/>' + note())
     assert values(score.parts[0].bars[0], MarkKind.TEMPO) == [120]
     assert "printed and played tempo differ" in score.findings[0].what
+    corrected = read('<sound tempo="120"/>' + direction(printed, '<sound tempo="72"/>') + note())
+    assert values(corrected.parts[0].bars[0], MarkKind.TEMPO) == [72]
+    assert not corrected.findings
 
 
 def test_a_tempo_of_nothing_is_no_tempo() -> None:

@@ -127,17 +127,14 @@ def _sound(element: Element, place: Place, bar: BarDraft, *, printed: bool) -> N
 
 def settle_tempi(bar: BarDraft) -> None:
     """Turn the tempi met in a bar into marks, one an onset; playback data count before print."""
-    best: dict[Fraction, tuple[Fraction, bool]] = {}
-    for onset, tempo, played in bar.tempi:
-        known = best.get(onset)
-        if known is not None and known[1] != played and abs(known[0] - tempo) > _NOTICEABLE:
+    printed = {onset: tempo for onset, tempo, played in bar.tempi if not played}
+    played = {onset: tempo for onset, tempo, played in bar.tempi if played}
+    for onset, tempo in (printed | played).items():
+        bar.mark(MarkKind.TEMPO, onset, tempo)
+        if abs(printed.get(onset, tempo) - tempo) > _NOTICEABLE:
             bar.remark(
                 Weight.DOUBT, "printed and played tempo differ; the played one is used", onset
             )
-        if known is None or played or not known[1]:
-            best[onset] = (tempo, played)
-    for onset, (tempo, _) in best.items():
-        bar.mark(MarkKind.TEMPO, onset, tempo)
 
 
 _READERS: dict[str, Callable[[Element, Place, BarDraft], None]] = {

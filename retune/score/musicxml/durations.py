@@ -55,7 +55,7 @@ def note_duration(element: Element, fields: Fields, bar: BarDraft) -> Fraction:
     if "grace" in fields:
         return ZERO
     length = read_length(fields.get("duration"), bar)
-    if not length:
+    if length is None or (length == 0 and "rest" not in fields):
         return _without_duration(element, fields, bar)
     if "type" in fields and "rest" not in fields and not _fits(element, fields, length, bar.part):
         bar.remark(
