@@ -185,6 +185,14 @@ def test_music21_reads_parts_bars_and_words(path: Path) -> None:
 
 
 @pytest.mark.parametrize("path", FILES, ids=name_of)
+def test_the_signs_a_singer_needs_are_there(path: Path) -> None:
+    root = etree.parse(str(path)).getroot()
+    for tag in ("fermata", "breath-mark", "wedge", "rehearsal", "measure-numbering", "sound"):
+        assert root.find(f".//{tag}") is not None, tag
+    assert "MIT" in root.findtext("identification/rights")
+
+
+@pytest.mark.parametrize("path", FILES, ids=name_of)
 def test_every_sung_note_has_its_syllable(path: Path) -> None:
     """Only a note inside a slur or after a tie goes on with the syllable before it."""
     for name, part in parts_of(path):
