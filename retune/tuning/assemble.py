@@ -92,7 +92,9 @@ class Assembler:
         )
 
     def _segments(self, note: Note, pieces: list[int]) -> tuple[Segment, ...]:
-        """One segment for each run of pieces with one chord and one pitch."""
+        """One segment for each run of pieces with one chord and one pitch; none for a grace note."""
+        if not pieces:
+            return ()
         chords, cents = self.layout.chord, self.x
         heads = [
             piece
