@@ -92,7 +92,7 @@ class Assembler:
         )
 
     def _segments(self, note: Note, pieces: list[int]) -> tuple[Segment, ...]:
-        """One segment for each run of pieces with one chord and one pitch; none for a grace note."""
+        """One segment for each run of pieces of one chord and pitch; none for a grace note."""
         if not pieces:
             return ()
         chords, cents = self.layout.chord, self.x
