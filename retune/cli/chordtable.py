@@ -15,12 +15,16 @@ import click
 
 from retune.harmony.model import Chord, Role
 from retune.harmony.symbols import chord_symbol
+from retune.score.model import Part
 from retune.tuning.model import Segment, TunedNote, TunedScore
 
 DOUBTFUL = 0.6
 """Confidence below which a root is marked with a question mark (our choice)."""
 
 _BAR, _BEAT, _CHORD = 5, 7, 8
+_NUMBER = 3
+"""Longest last word taken for a number: 2, II, III."""
+
 _MARGIN = 1 + _BAR + _BEAT + _CHORD
 
 
@@ -101,19 +105,21 @@ def _cells(row: dict[int, tuple[TunedNote, Segment]], parts: Sequence[int], layo
     return "".join(f"{_cell_text(cell, layout):<{layout.cell}}" for cell in cells).rstrip()
 
 
-def _short(name: str, room: int) -> str:
-    """A part's name in a room: cut words first, so that Tenor 2 stays Ten 2."""
-    if len(name) <= room:
-        return name
-    *words, last = name.split() or [""]
-    if words and last.isdigit():
+def _short(part: Part, room: int) -> str:
+    """A part's name in a room; its number stays, so that Tenor 2 becomes Ten 2."""
+    if len(part.name) <= room:
+        return part.name
+    if 0 < len(part.abbreviation) <= room:
+        return part.abbreviation
+    *words, last = part.name.split() or [""]
+    if words and len(last) <= _NUMBER:
         return f"{' '.join(words)[: room - len(last) - 1].rstrip()} {last}"
-    return name[:room]
+    return part.name[:room]
 
 
 def _heading(tuned: TunedScore, parts: Sequence[int], layout: Layout, first: bool) -> str:
     left = f" {'bar':<{_BAR}}{'beat':<{_BEAT}}{'chord':<{_CHORD}}" if first else " " * _MARGIN
-    names = (f"{_short(tuned.score.parts[p].name, layout.cell - 2):<{layout.cell}}" for p in parts)
+    names = (f"{_short(tuned.score.parts[p], layout.cell - 1):<{layout.cell}}" for p in parts)
     return click.style((left + "".join(names)).rstrip(), bold=True)
 
 

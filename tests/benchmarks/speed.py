@@ -31,7 +31,7 @@ BARE = (
     "import sys; from music21 import converter; "
     "converter.parse(sys.argv[1], forceSource=True, storePickle=False)"
 )
-PIECES = {"chorale": "bach/bwv269", "long madrigal": "monteverdi/madrigal.5.8"}
+PIECES = {"chorale": "bach/bwv269.mxl", "long madrigal": "monteverdi/madrigal.5.8.mxl"}
 """One short and one long piece of music21's corpus."""
 
 
@@ -44,11 +44,12 @@ def seconds_of(arguments: list[str]) -> float:
 
 def against_bare_parse(rounds: int) -> dict[str, dict[str, float]]:
     """For each piece: median seconds of both processes and their ratio."""
-    from music21 import corpus
+    import music21
 
+    corpus = Path(music21.__file__).parent / "corpus"
     table: dict[str, dict[str, float]] = {}
     for label, name in PIECES.items():
-        path = str(corpus.getWork(name))
+        path = str(corpus / name)
         ours, bare = [], []
         for _ in range(rounds):
             with tempfile.TemporaryDirectory() as folder:
