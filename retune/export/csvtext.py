@@ -6,6 +6,7 @@ import csv
 import io
 import re
 from collections.abc import Iterable, Sequence
+from functools import lru_cache
 
 _RUNS = ("=", "+", "-", "@", "＝", "＋", "－", "＠", "\t", "\r", "\n")
 _NUMBER = re.compile(r"[+-]?\d+(\.\d+)?")
@@ -27,8 +28,13 @@ def csv_bytes(header: Sequence[str], rows: Iterable[Sequence[Cell]], bom: bool =
 
 
 def _shown(cell: Cell) -> str | int | None:
-    if isinstance(cell, float):
-        return f"{cell:.6f}"
-    if isinstance(cell, str) and cell.lstrip(" ").startswith(_RUNS) and not _NUMBER.fullmatch(cell):
-        return f"'{cell}"
-    return cell
+    if isinstance(cell, str):
+        return _safe(cell)
+    return f"{cell:.6f}" if isinstance(cell, float) else cell
+
+
+@lru_cache(maxsize=4096)
+def _safe(text: str) -> str:
+    if text.lstrip(" ").startswith(_RUNS) and not _NUMBER.fullmatch(text):
+        return f"'{text}"
+    return text

@@ -68,34 +68,34 @@ class NotesExporter:
     def export(self, takes: Sequence[Take], options: NotesOptions) -> Iterator[OutputFile]:
         """Yield NAME.notes.csv and NAME.notes.json."""
         tuned = takes[0].tuned
+        places = Places(tuned)
+        chords = [_chord(tuned, places, chord) for chord in tuned.harmony.chords]
+        notes = [_note(tuned, places, note) for note in tuned.notes]
+        rows = _rows(tuned, places, chords, notes)
         name = f"notes/{safe_name(tuned.score.stem)}.notes"
-        rows = _rows(tuned)
         yield OutputFile(f"{name}.csv", csv_bytes(_COLUMNS, rows, options.bom))
-        yield OutputFile(f"{name}.json", "".join(_json_text(tuned)).encode("utf-8", "replace"))
+        text = "".join(_json_text(tuned, chords, notes))
+        yield OutputFile(f"{name}.json", text.encode("utf-8", "replace"))
 
 
-def _json_text(tuned: TunedScore) -> Iterator[str]:
+_Object = dict[str, Any]
+
+
+def _json_text(tuned: TunedScore, chords: list[_Object], notes: list[_Object]) -> Iterator[str]:
     """The document, an object a line inside its lists."""
-    places = Places(tuned)
     yield "{"
     yield ",\n ".join(f'"{key}": {_dumped(value)}' for key, value in _head(tuned).items())
-    lists: dict[str, Iterable[dict[str, Any]]] = {
-        "parts": _parts(tuned),
-        "chords": (_chord(tuned, places, chord) for chord in tuned.harmony.chords),
-        "notes": (_note(tuned, places, note) for note in tuned.notes),
-    }
-    for key, values in lists.items():
+    for key, values in (("parts", _parts(tuned)), ("chords", chords), ("notes", notes)):
         yield f',\n "{key}": ['
         yield ",".join(f"\n  {_dumped(value)}" for value in values)
         yield "]"
     yield f',\n "figures": {_dumped(plain(tuned.figures))}}}\n'
 
 
-def _dumped(value: Any) -> str:
-    return json.dumps(value, ensure_ascii=False, allow_nan=False)
+_dumped = json.JSONEncoder(ensure_ascii=False, allow_nan=False, check_circular=False).encode
 
 
-def _head(tuned: TunedScore) -> dict[str, Any]:
+def _head(tuned: TunedScore) -> _Object:
     policy = tuned.policy
     held = "any" if math.isinf(policy.held_shift) else policy.held_shift
     return {
@@ -113,13 +113,13 @@ def _head(tuned: TunedScore) -> dict[str, Any]:
     }
 
 
-def _parts(tuned: TunedScore) -> list[dict[str, Any]]:
+def _parts(tuned: TunedScore) -> list[_Object]:
     return [
         {"index": part.index, "name": part.name, "tuned": part.tuned} for part in tuned.score.parts
     ]
 
 
-def _chord(tuned: TunedScore, places: Places, chord: Chord) -> dict[str, Any]:
+def _chord(tuned: TunedScore, places: Places, chord: Chord) -> _Object:
     bar, beat = places.bar_and_beat(chord.onset)
     root_cents = tuned.root_cents[chord.index]
     return {
@@ -137,7 +137,7 @@ def _chord(tuned: TunedScore, places: Places, chord: Chord) -> dict[str, Any]:
     }
 
 
-def _note(tuned: TunedScore, places: Places, tuned_note: TunedNote) -> dict[str, Any]:
+def _note(tuned: TunedScore, places: Places, tuned_note: TunedNote) -> _Object:
     note = tuned_note.note
     bar, beat = places.bar_and_beat(note.onset)
     seconds, length = places.seconds(note.onset, note.end)
@@ -158,9 +158,7 @@ def _note(tuned: TunedScore, places: Places, tuned_note: TunedNote) -> dict[str,
     }
 
 
-def _segment(
-    tuned: TunedScore, places: Places, note: TunedNote, segment: Segment
-) -> dict[str, Any]:
+def _segment(tuned: TunedScore, places: Places, note: TunedNote, segment: Segment) -> _Object:
     seconds, length = places.seconds(segment.onset, segment.end)
     return {
         "onset": str(segment.onset),
@@ -175,38 +173,32 @@ def _segment(
     }
 
 
-def _rows(tuned: TunedScore) -> Iterator[Sequence[Cell]]:
+def _rows(
+    tuned: TunedScore, places: Places, chords: list[_Object], notes: list[_Object]
+) -> Iterator[Sequence[Cell]]:
     """A row a segment: its own times and place, and what its note and chord are."""
-    places = Places(tuned)
     names = [part.name for part in tuned.score.parts]
-    chords = [
-        (
-            chord.root.name if chord.root else None,
-            str(chord.quality) if chord.quality else None,
-            chord_symbol(chord) or None,
-        )
-        for chord in tuned.harmony.chords
-    ]
-    for index, tuned_note in enumerate(tuned.notes):
-        note = tuned_note.note
-        for segment in tuned_note.segments:
+    chord_cells = [(one["root"], one["quality"], one["symbol"]) for one in chords]
+    for index, (tuned_note, note) in enumerate(zip(tuned.notes, notes, strict=True)):
+        for segment, shown in zip(tuned_note.segments, note["segments"], strict=True):
             yield (
                 index,
-                note.part,
-                names[note.part],
-                str(segment.onset),
-                str(segment.duration),
+                note["part"],
+                names[note["part"]],
+                shown["onset"],
+                shown["duration"],
                 *places.bar_and_beat(segment.onset),
-                note.pitch.name,
-                note.pitch.key,
-                note.lyric,
-                *places.seconds(segment.onset, segment.end),
+                note["pitch"],
+                note["key"],
+                note["lyric"],
+                shown["seconds"],
+                shown["length_seconds"],
                 segment.chord,
-                *chords[segment.chord],
-                str(segment.role),
-                None if segment.ratio is None else str(segment.ratio),
-                rounded(segment.cents),
-                rounded(tuned.hz(tuned_note, segment)),
+                *chord_cells[segment.chord],
+                shown["role"],
+                shown["ratio"],
+                shown["cents"],
+                shown["hz"],
             )
 
 

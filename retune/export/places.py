@@ -25,6 +25,7 @@ class Places:
     def __init__(self, tuned: TunedScore) -> None:
         self._score = tuned.score
         self._known: dict[Fraction, tuple[str, str]] = {}
+        self._known_seconds: dict[Fraction, float] = {}
 
     def bar_and_beat(self, onset: Fraction) -> tuple[str, str]:
         """Printed bar number and beat, both as text."""
@@ -36,5 +37,11 @@ class Places:
 
     def seconds(self, onset: Fraction, end: Fraction) -> tuple[float, float]:
         """Seconds of the onset and of the length, to six decimals."""
-        start = self._score.tempo.seconds(onset)
-        return rounded(start), rounded(self._score.tempo.seconds(end) - start)
+        start = self._second(onset)
+        return rounded(start), rounded(self._second(end) - start)
+
+    def _second(self, time: Fraction) -> float:
+        found = self._known_seconds.get(time)
+        if found is None:
+            found = self._known_seconds[time] = self._score.tempo.seconds(time)
+        return found
