@@ -103,21 +103,23 @@ class Assembler:
             or chords[before] != chords[piece]
             or abs(cents[before] - cents[piece]) > _EQUAL
         ]
+        if len(heads) == 1:
+            return (self._segment(heads[0], note.onset, note.duration),)
         slices, first = self.harmony.slices, self.layout.first
         onsets = [note.onset, *(slices[first[piece]].onset for piece in heads[1:])]
         ends = [*onsets[1:], note.end]
         # Grace notes that follow may have taken the last pieces' time.
         return tuple(
-            self._segment(piece, onset, min(end, note.end))
+            self._segment(piece, onset, min(end, note.end) - onset)
             for piece, onset, end in zip(heads, onsets, ends, strict=True)
             if onset < note.end
         )
 
-    def _segment(self, piece: int, onset: Fraction, end: Fraction) -> Segment:
+    def _segment(self, piece: int, onset: Fraction, duration: Fraction) -> Segment:
         fragment = self.harmony.fragments[self.layout.fragment[piece]]
         return Segment(
             onset,
-            end - onset,
+            duration,
             fragment.chord,
             fragment.role,
             self._ratio(piece),

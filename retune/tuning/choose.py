@@ -25,7 +25,9 @@ from retune.tuning.policies import Weights
 from retune.tuning.ratios import AUGMENTED_SIXTH, Template, templates
 
 _GRID, _STEP = 46, 2.0
-_CHANGES = (np.arange(_GRID) * _STEP + 46.0) % 92.0 - 46.0
+_CIRCLE = _GRID * _STEP
+_HALF = _CIRCLE / 2
+_CHANGES = (np.arange(_GRID) * _STEP + _HALF) % _CIRCLE - _HALF
 _PLACES = _CHANGES
 # _TURN[before, after] is the change that leads from one place to another.
 _TURN = (np.arange(_GRID)[None, :] - np.arange(_GRID)[:, None]) % _GRID
@@ -33,6 +35,10 @@ _STEEP = 100.0
 """Weight of what a held shift exceeds its cap by."""
 _SCANT = 0.02
 """Weight of a root's departure from the scale's own step, which decides where nothing else does."""
+_EXCEPTION = 5000.0
+"""Cost of a dominant seventh or augmented sixth that is not 4:5:6:7 though limit 7 is in force:
+less than a held note over its cap by 7 cents, more than a few repeated notes by a comma."""
+_DOMINANT = (0, 4, 7, 10)
 _LINKS_AT_ONCE = 20_000
 _DEGREES = 5  # four degrees, and one that stands for none
 
@@ -78,6 +84,11 @@ def wolves(template: Template, degrees: frozenset[int], limit: int) -> float:
     return total
 
 
+def is_exception(template: Template, first: Template) -> bool:
+    """Whether a dominant seventh is not 4:5:6:7 where that is preferred."""
+    return template.semitones == _DOMINANT and template.limit < 7 <= first.limit
+
+
 class Chooser:
     """One piece's alternatives and what they cost, ready for the search.
 
@@ -117,26 +128,24 @@ class Chooser:
     def _own_costs(self) -> list[Floats]:
         """For each chord: cost of each alternative at each place, shape (alternatives, grid)."""
         layout, weights = self.layout, self.weights
-        length = np.where(self.tone, layout.length, 0.0)
-        chords = len(self.options)
-        total = np.bincount(layout.chord, length, minlength=chords)
-        span = np.zeros(chords)
-        np.maximum.at(span, layout.chord, length)
+        length = np.zeros(len(self.options))
+        np.maximum.at(length, layout.chord, np.where(self.tone, layout.length, 0.0))
+        away = (_PLACES[None, :] - self.places[:, None] + _HALF) % _CIRCLE - _HALF
+        anchor = weights.anchor * np.where(self.home, weights.tonic, 1.0)
+        pull = (anchor * length)[:, None] * away**2
+        wolf = weights.chord * weights.wolf * length
         sounding: list[set[int]] = [set() for _ in self.options]
         for chord, degree in zip(
             layout.chord[self.tone].tolist(), layout.degree[self.tone].tolist(), strict=True
         ):
             sounding[chord].add(degree)
-        away = (_PLACES[None, :] - self.places[:, None] + 46.0) % 92.0 - 46.0
-        voices = np.maximum(np.divide(total, span, out=np.ones(chords), where=span > 0), 1.0)
-        anchor = weights.anchor * np.where(self.home, weights.tonic, 1.0)
-        pull = (anchor * total / voices)[:, None] * away**2
         found = []
         for chord, choices in enumerate(self.options):
             heard = frozenset(sounding[chord])
-            badness = [wolves(one, heard, self.limit) for one in choices] or [0.0]
-            scaled = np.array(badness) * (weights.chord * weights.wolf * span[chord])
-            found.append(pull[chord][None, :] + scaled[:, None])
+            impure = [wolf[chord] * wolves(one, heard, self.limit) for one in choices]
+            exceptional = [_EXCEPTION * is_exception(one, choices[0]) for one in choices]
+            badness = np.array(impure or [0.0]) + np.array(exceptional or [0.0])
+            found.append(pull[chord][None, :] + badness[:, None])
         return found
 
     def _link_costs(self, links: Ints, kind: str) -> Floats:

@@ -105,6 +105,11 @@ def _constant_rows(problem: Problem, unknown: Ints, steady: bool) -> Iterator[Ro
     sung = np.flatnonzero(layout.tuned)
     yield absolute(unknown[sung], anchor[sung], targets.place[sung])
     yield _fixed_rows(problem, unknown)
+    if problem.policy.drift is Drift.WITHIN:
+        # The bound is measured from home; so that the first tonic chord is home, it stands there.
+        home = _home(problem)
+        first = home[layout.chord[home] == layout.chord[home[:1]]]
+        yield absolute(unknown[first], np.full(len(first), STIFF), targets.just[first])
     jump = bridges(layout)
     step = targets.place[jump[:, 1]] - targets.place[jump[:, 0]]
     yield between(unknown[jump], np.full(len(jump), weights.bridge), step)
@@ -112,6 +117,12 @@ def _constant_rows(problem: Problem, unknown: Ints, steady: bool) -> Iterator[Ro
     weight = np.where(steady, STIFF, held_weights(layout, weights, problem.lead))
     links = unknown[layout.held[held]]
     yield between(links, weight[held], np.zeros(held.sum()))
+
+
+def _home(problem: Problem) -> Ints:
+    """The voices' chord tones, and any tonic they sing alone, in chords on the home tonic."""
+    layout, targets = problem.layout, problem.targets
+    return np.flatnonzero(targets.home & layout.tuned & (targets.tone | (layout.degree == 0)))
 
 
 def _bounds(problem: Problem, unknown: Ints) -> list[Bounds]:
@@ -123,7 +134,7 @@ def _bounds(problem: Problem, unknown: Ints) -> list[Bounds]:
         zeros = np.zeros(len(held))
         found.append(Bounds(between(held, zeros + STIFF, zeros), zeros + policy.held_shift))
     if policy.drift is Drift.WITHIN:
-        home = np.flatnonzero(targets.home & targets.tone & layout.tuned)
+        home = _home(problem)
         stiff = np.full(len(home), STIFF)
         rows = absolute(unknown[home], stiff, targets.just[home])
         found.append(Bounds(rows, np.full(len(home), policy.drift_within)))

@@ -78,8 +78,8 @@ class Weights:
 _GENTLE = Weights()
 
 WEIGHTS: dict[Drift, Weights] = {
-    Drift.FOLLOW: replace(_GENTLE, anchor=1e-6, start=1.0),
-    Drift.WITHIN: replace(_GENTLE, anchor=0.03, start=1.0),
+    Drift.FOLLOW: replace(_GENTLE, anchor=1e-6, tonic=1.0, start=1.0),
+    Drift.WITHIN: replace(_GENTLE, anchor=0.03, tonic=1.0),
     Drift.GENTLE: _GENTLE,
-    Drift.ANCHORED: replace(_GENTLE, anchor=1.0, tonic=3.0),
+    Drift.ANCHORED: replace(_GENTLE, anchor=0.2, tonic=30.0),
 }

@@ -21,7 +21,7 @@ from functools import cache
 from math import ceil, floor
 
 from retune.harmony.model import Degree, Quality
-from retune.units import octave_reduced, ratio_to_cents
+from retune.units import largest_prime, octave_reduced, ratio_to_cents
 
 DEGREES = (Degree.ROOT, Degree.THIRD, Degree.FIFTH, Degree.SEVENTH)
 
@@ -43,30 +43,38 @@ SPELLED: dict[Quality, tuple[int, ...]] = {
 """The usual spelling of each quality above its root, on the line of fifths."""
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True, slots=True, eq=False)
 class Template:
-    """The ratios of one chord, root first; `ratios` is None for a tempered chord.
+    """The ratios of one chord, root first; one object for each, made by `templates`.
 
-    `spelled` is the chord's spelling on the line of fifths, of the same length.
+    Parameters
+    ----------
+    spelled, semitones : tuple of int
+        Each degree's place on the line of fifths, and its size in equal temperament, 0 to 11.
+    ratios : tuple of Fraction or None
+        None for a tempered chord.
+    cents : tuple of float
+        Each degree's distance from equal temperament above an untempered root.
     """
 
     spelled: tuple[int, ...]
+    semitones: tuple[int, ...]
     ratios: tuple[Fraction, ...] | None
+    cents: tuple[float, ...]
 
     @property
-    def semitones(self) -> tuple[int, ...]:
-        """Each degree's size in equal temperament, 0 to 11."""
-        return tuple(7 * place % 12 for place in self.spelled)
+    def limit(self) -> int:
+        """The largest prime in its ratios; 1 for a tempered chord."""
+        return max((largest_prime(ratio) for ratio in self.ratios or ()), default=1)
 
-    @property
-    def cents(self) -> tuple[float, ...]:
-        """Each degree's distance from equal temperament, in cents above an untempered root."""
-        if self.ratios is None:
-            return (0.0,) * len(self.spelled)
-        return tuple(
-            ratio_to_cents(ratio) - 100.0 * steps
-            for ratio, steps in zip(self.ratios, self.semitones, strict=True)
-        )
+
+def _template(spelled: tuple[int, ...], ratios: tuple[Fraction, ...] | None) -> Template:
+    semitones = tuple(7 * place % 12 for place in spelled)
+    cents = tuple(
+        ratio_to_cents(ratio) - 100.0 * steps
+        for ratio, steps in zip(ratios or (), semitones, strict=ratios is not None)
+    )
+    return Template(spelled, semitones, ratios, cents or (0.0,) * len(spelled))
 
 
 # Third, fifth and seventh of each template by prime limit, the preferred one first; "" is the
@@ -143,10 +151,10 @@ def templates(quality: Quality, limit: int, augmented_sixth: bool = False) -> tu
     if sixth:
         spelled = (*spelled[:3], AUGMENTED_SIXTH)
     if limit == 3:
-        return (Template(spelled, tuple(power(place, 0) for place in spelled)),)
+        return (_template(spelled, tuple(power(place, 0) for place in spelled)),)
     table = _FIVE if limit == 5 else _SEVEN
     return tuple(
-        Template(spelled, (Fraction(1), *map(Fraction, text.split())) if text else None)
+        _template(spelled, (Fraction(1), *map(Fraction, text.split())) if text else None)
         for text in (_SIXTHS[limit] if sixth else table[quality])
     )
 

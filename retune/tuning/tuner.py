@@ -11,6 +11,7 @@ from retune.score.model import Score
 from retune.tuning import figures
 from retune.tuning.assemble import Assembler, root_cents
 from retune.tuning.choose import choose, options_of, preferred
+from retune.tuning.findings import findings
 from retune.tuning.fixed import CentsOf, accompaniment, temperament
 from retune.tuning.intervals import Floats
 from retune.tuning.layout import Layout, lay_out
@@ -19,7 +20,7 @@ from retune.tuning.placement import Problem, place
 from retune.tuning.policies import WEIGHTS
 from retune.tuning.policy import Policy
 from retune.tuning.ratios import scale_cents
-from retune.tuning.targets import Targets, aim
+from retune.tuning.targets import aim
 
 
 def tune(score: Score, harmony: Harmony, policy: Policy) -> TunedScore:
@@ -46,6 +47,7 @@ def tune(score: Score, harmony: Harmony, policy: Policy) -> TunedScore:
     tempered = temperament(policy.temperament, tonic)
     unmoving = accompaniment(policy.accompaniment_tuning, tonic)
 
+    found: tuple[Finding, ...] = ()
     fixed = _piece_cents(score, layout, unmoving)
     if tempered is None:
         home = np.array([chord.root == tonic for chord in harmony.chords], dtype=bool)
@@ -55,6 +57,8 @@ def tune(score: Score, harmony: Harmony, policy: Policy) -> TunedScore:
         start = targets.place + (choice.roots - targets.roots)[layout.chord]
         root = np.array([unmoving(c.root) if c.root else 0.0 for c in harmony.chords])
         x = place(Problem(layout, targets, policy, start, fixed, root[layout.chord], lead))
+        chosen, cap = choice.templates, policy.held_shift
+        found = findings(score, harmony, layout, options, chosen, x, cap)
     else:
         x = np.where(layout.tuned, _piece_cents(score, layout, tempered), fixed)
     scale = tempered or _home_scale(tonic, policy.prime_limit)
@@ -73,12 +77,8 @@ def tune(score: Score, harmony: Harmony, policy: Policy) -> TunedScore:
             "melody": figures.melody(layout, x, limit),
             "drift": figures.drift(score, harmony, tonic, roots),
         },
-        findings=_findings(targets),
+        findings=found,
     )
-
-
-def _findings(targets: Targets) -> tuple[Finding, ...]:
-    return ()
 
 
 def _lead(score: Score, name: str | None) -> int | None:
