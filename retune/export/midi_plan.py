@@ -101,10 +101,11 @@ class Planner:
     ) -> Iterator[tuple[int, int]]:
         """Bends from one pitch to the next: the first step at the segment's onset, the last
         after the glide time or half the segment, whichever is shorter."""
-        start, end = self.ticks.at(segment.onset), self.ticks.at(segment.end)
-        seconds = tempo.seconds(segment.end) - tempo.seconds(segment.onset)
-        span = min(self.glide, seconds / 2)
-        length = math.floor((end - start) * span / seconds) if seconds > 0 else 0
+        start = self.ticks.at(segment.onset)
+        begins, ends = tempo.seconds(segment.onset), tempo.seconds(segment.end)
+        span = min(self.glide, (ends - begins) / 2)
+        last = math.floor(tempo.quarters(begins + span) * self.ticks.division)
+        length = max(last - start, 0)
         before, after = cents
         steps = min(
             math.ceil(abs(after - before) / _GLIDE_STEP_CENTS),

@@ -55,3 +55,13 @@ class TempoMap:
         index = max(bisect_right(self._onsets, quarters) - 1, 0)
         per_quarter = 60.0 / float(self.changes[index].qpm)
         return self._seconds[index] + (quarters - self._onsets[index]) * per_quarter
+
+    def quarters(self, seconds: float) -> float:
+        """The onset in quarter notes at a time in seconds from the start; inverse of `seconds`.
+
+        >>> TempoMap().quarters(TempoMap().seconds(Fraction(5, 2)))
+        2.5
+        """
+        index = max(bisect_right(self._seconds, seconds) - 1, 0)
+        per_second = float(self.changes[index].qpm) / 60.0
+        return self._onsets[index] + (seconds - self._seconds[index]) * per_second

@@ -292,7 +292,7 @@ SLOW_WRITER = """
 import signal, sys, time
 from pathlib import Path
 sys.path.insert(0, {here!r})
-from test_disk import Output
+from tests.adapters.test_disk import Output
 from retune.adapters.disk import write_all
 
 def interrupt(number, frame):
@@ -310,7 +310,7 @@ write_all([Output("a"), Output("b/c", check=check)], Path(sys.argv[1]))
 
 @pytest.mark.parametrize("number", [signal.SIGINT, signal.SIGTERM])
 def test_a_signal_leaves_nothing(tmp_path: Path, number: signal.Signals) -> None:
-    script = SLOW_WRITER.format(here=str(Path(__file__).parent))
+    script = SLOW_WRITER.format(here=str(Path(__file__).parents[2]))
     process = subprocess.Popen(
         [sys.executable, "-c", script, str(tmp_path / "out")],
         stdout=subprocess.PIPE,
