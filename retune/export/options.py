@@ -53,7 +53,7 @@ def read_options(exporter: str, options: type[Any], texts: Mapping[str, str]) ->
         if name not in types:
             raise WishError(
                 f"the output {exporter} has no option '{name}'",
-                hint=did_you_mean(name, types) or _there_is(exporter, types),
+                hint=did_you_mean(name, types) + _there_is(exporter, types),
             )
         values[name] = _value(exporter, name, types[name], text.strip())
     found = options(**values)
@@ -72,13 +72,13 @@ def require_allowed(exporter: str, options: Any) -> None:
 
 
 def did_you_mean(word: str, known: Iterable[str]) -> str:
-    """A question that offers the nearest known word, or nothing.
+    """A question that offers the nearest known word, to stand before a list of all; or nothing.
 
     >>> did_you_mean("chanels", ["channels", "glide_ms"])
-    'Did you mean channels?'
+    'Did you mean channels? '
     """
     near = difflib.get_close_matches(word, list(known), n=1)
-    return f"Did you mean {near[0]}?" if near else ""
+    return f"Did you mean {near[0]}? " if near else ""
 
 
 def _there_is(exporter: str, names: Iterable[str]) -> str:
@@ -116,4 +116,4 @@ def _allowed(kind: type[Any], text: str) -> str:
     if kind is float:
         return "It is a number, such as 2.5"
     choices = _choices(kind)
-    return did_you_mean(text, choices) or f"It is one of {', '.join(choices)}"
+    return did_you_mean(text, choices) + f"It is one of {', '.join(choices)}"

@@ -50,7 +50,7 @@ class Exporters:
             raise WishError(self.broken[name], hint="Install it again, or remove it")
         names = [entry.exporter.name for entry in self.entries]
         installed = f"Installed are {', '.join(names)}" if names else "None is installed"
-        hint = f"{did_you_mean(name, names)} {installed}".strip()
+        hint = did_you_mean(name, names) + installed
         raise WishError(f"there is no output called '{name}'", hint=hint)
 
 

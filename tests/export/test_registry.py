@@ -164,9 +164,9 @@ def test_options_are_read_by_their_types() -> None:
 @pytest.mark.parametrize(
     ("name", "text", "message"),
     [
-        ("shap", "round", r"no option 'shap'\. Did you mean shape\?"),
+        ("shap", "round", r"no option 'shap'\. Did you mean shape\? It has shape, count"),
         ("zzz", "1", "It has shape, count, ratio, loud, label"),
-        ("shape", "rond", r"Did you mean round\?"),
+        ("shape", "rond", r"Did you mean round\? It is one of"),
         ("shape", "7", "It is one of round, square"),
         ("count", "1.5", "whole number"),
         ("count", "9" * 5000, "whole number"),
