@@ -36,12 +36,11 @@ def analyse(score: Score, tonic: PitchClass | None = None) -> Harmony:
 def analyse_with(score: Score, weights: Weights, tonic: PitchClass | None = None) -> Harmony:
     """Analyse with other weights than the package's own."""
     timeline = make_timeline(score)
-    slices = make_slices(score, timeline)
     evidence = gather_evidence(score, timeline)
-    chords = make_chords(score, slices, evidence, segment(evidence, weights))
+    chords = make_chords(timeline, evidence, segment(evidence, weights))
     return Harmony(
-        slices=slices,
+        slices=make_slices(score, timeline),
         chords=chords,
-        fragments=find_roles(score, timeline, chords),
+        fragments=find_roles(timeline, chords),
         tonic=find_tonic(score, evidence, chords, tonic),
     )

@@ -9,36 +9,39 @@ Conventions
 
 from __future__ import annotations
 
-from collections import defaultdict
 from collections.abc import Iterator
-from fractions import Fraction
 
 import numpy as np
 
 from retune.harmony.evidence import Evidence
-from retune.harmony.model import Chord, Slice
+from retune.harmony.metre import TOLERANCE
+from retune.harmony.model import Chord
 from retune.harmony.naming import spell_root
 from retune.harmony.segment import Segmentation
-from retune.harmony.states import QUALITIES, QUALITY_OF, ROOT_OF, ROOTS, Bools, Floats
-from retune.pitch import PitchClass
-from retune.score.model import Score
+from retune.harmony.states import QUALITIES, QUALITY_OF, ROOT_OF, ROOTS, Bools, Floats, Ints
+from retune.harmony.timeline import Timeline
 
 BREATH = 1.0
 """Quarter notes."""
 WORTH_NAMING = 0.005
 """Least probability of a runner-up."""
 
+_SPELLINGS = 1024
+
 Run = tuple[int, int, int | None]
 """First slice, last slice (excluded) and state; None for silence."""
 
 
-def make_chords(
-    score: Score, slices: tuple[Slice, ...], evidence: Evidence, found: Segmentation
-) -> tuple[Chord, ...]:
+def make_chords(timeline: Timeline, evidence: Evidence, found: Segmentation) -> tuple[Chord, ...]:
     """The chords of a segmentation, covering all slices."""
     runs = _joined(_runs(evidence, found))
+    if not runs:
+        return ()
+    firsts = np.array([first for first, _, _ in runs])
+    shares = _shares(evidence, found, firsts)
+    heard = _heard(evidence, firsts)
     return tuple(
-        _chord(index, run, score, slices, evidence, found) for index, run in enumerate(runs)
+        _chord(index, run, timeline, shares[index], heard[index]) for index, run in enumerate(runs)
     )
 
 
@@ -77,42 +80,45 @@ def _joined(runs: Iterator[Run]) -> list[Run]:
 
 
 def _chord(
-    index: int,
-    run: Run,
-    score: Score,
-    slices: tuple[Slice, ...],
-    evidence: Evidence,
-    found: Segmentation,
+    index: int, run: Run, timeline: Timeline, shares: Floats, heard: list[tuple[int, float]]
 ) -> Chord:
     first, last, state = run
-    onset = slices[first].onset
-    duration = slices[last - 1].onset + slices[last - 1].duration - onset
+    onset = timeline.boundaries[first]
+    duration = timeline.boundaries[last] - onset
     if state is None:
         return Chord(index, onset, duration, first, last, None, None, 1.0)
-    heard = _heard(score, slices[first:last])
-    shares = _shares(evidence, found, first, last)
     root, quality = int(ROOT_OF[state]), QUALITIES[QUALITY_OF[state]]
-    by_root = shares.reshape(ROOTS, -1).sum(axis=1)
+    by_root = shares.sum(axis=1)
     confidence = float(min(by_root[root], 1.0))
     by_root[root] = 0.0
     other = int(by_root.argmax())
     runner_up = None
     if by_root[other] >= WORTH_NAMING:
-        other_quality = QUALITIES[int(shares.reshape(ROOTS, -1)[other].argmax())]
+        other_quality = QUALITIES[int(shares[other].argmax())]
         runner_up = (spell_root(other, other_quality, heard), other_quality)
     name = spell_root(root, quality, heard)
     return Chord(index, onset, duration, first, last, name, quality, confidence, runner_up)
 
 
-def _shares(evidence: Evidence, found: Segmentation, first: int, last: int) -> Floats:
-    """Posterior of the states over the sounding time of a run, shape (120,)."""
-    weight = np.where(evidence.bass[first:last] >= 0, np.diff(evidence.time[first : last + 1]), 0)
-    return np.asarray(weight @ found.posterior[first:last] / weight.sum(), dtype=np.float64)
+def _shares(evidence: Evidence, found: Segmentation, firsts: Ints) -> Floats:
+    """Posterior over the sounding time of each run, shape (runs, 12, 10)."""
+    weight = np.where(evidence.bass >= 0, evidence.length, 0.0)
+    weighted = np.add.reduceat(found.posterior * weight[:, None], firsts, axis=0)
+    time = np.maximum(np.add.reduceat(weight, firsts), TOLERANCE)
+    return np.asarray((weighted / time[:, None]).reshape(-1, ROOTS, len(QUALITIES)))
 
 
-def _heard(score: Score, slices: tuple[Slice, ...]) -> list[tuple[PitchClass, float]]:
-    time: dict[PitchClass, Fraction] = defaultdict(Fraction)
-    for piece in slices:
-        for note in piece.notes:
-            time[score.notes[note].pitch.pitch_class] += piece.duration
-    return [(pitch_class, float(duration)) for pitch_class, duration in time.items()]
+def _heard(evidence: Evidence, firsts: Ints) -> list[list[tuple[int, float]]]:
+    """Spellings that sound in each run, with their quarter notes."""
+    slices = evidence.cells // ROOTS
+    run = np.searchsorted(firsts, slices, side="right") - 1
+    # One number for run and spelling; spellings lie within a few dozen fifths of C.
+    codes, which = np.unique(
+        run * _SPELLINGS + evidence.fifths + _SPELLINGS // 2, return_inverse=True
+    )
+    quarters = np.bincount(which, evidence.length[slices])
+    heard: list[list[tuple[int, float]]] = [[] for _ in firsts]
+    for code, time in zip(codes.tolist(), quarters.tolist(), strict=True):
+        index, spelling = divmod(code, _SPELLINGS)
+        heard[index].append((spelling - _SPELLINGS // 2, time))
+    return heard

@@ -15,9 +15,25 @@ import numpy as np
 
 from retune.harmony.fragments import cut_notes
 from retune.harmony.metre import TOLERANCE, grid_points, metric_levels
-from retune.harmony.states import ROOTS, Floats, Ints
+from retune.harmony.naming import FIFTHS_OF_INTERVAL
+from retune.harmony.states import (
+    QUALITIES,
+    QUALITY_OF,
+    ROOT_OF,
+    ROOTS,
+    STATES,
+    TONES,
+    Bytes,
+    Floats,
+    Ints,
+)
 from retune.harmony.timeline import Timeline
 from retune.score.model import Score
+
+NEARBY = 8.0
+"""Quarter notes to each side that count as the surroundings of a slice."""
+_UNHEARD = 99
+"""Place on the line of fifths of a pitch class that does not sound."""
 
 
 @dataclass(frozen=True)
@@ -40,8 +56,13 @@ class Evidence:
         Quarter notes of sounding voices, and pieces that begin, by pitch class.
     sounding : float64 array, shape (n, 12)
         1 where a pitch class sounds.
-    cells, approaches : int64 arrays, shape (incidences,)
-        12 * slice + pitch class, and the approach, of every piece in every slice it touches.
+    profile : float64 array, shape (n, 12)
+        Share of each pitch class in the sounding time around the slice.
+    misspelt : int8 array, shape (n, 120)
+        Chord tones per state that the notation spells as another interval above its root.
+    cells, fifths, approaches : int64 arrays, shape (incidences,)
+        12 * slice + pitch class, place of the spelling on the line of fifths, and approach, of
+        every piece in every slice it touches.
     beginning : int64 array
         Places in `cells` of the incidences that begin a piece.
     """
@@ -54,7 +75,10 @@ class Evidence:
     held: Floats
     begun: Floats
     sounding: Floats
+    profile: Floats
+    misspelt: Bytes
     cells: Ints
+    fifths: Ints
     approaches: Ints
     beginning: Ints
 
@@ -82,32 +106,42 @@ class Evidence:
 def gather_evidence(score: Score, timeline: Timeline) -> Evidence:
     """Count what sounds in every slice."""
     count = timeline.count
-    keys = np.array([score.notes[i].pitch.key for i in timeline.notes.tolist()], dtype=np.int64)
     pieces = cut_notes(score, timeline)
     spans = pieces.last - pieces.first
     piece = np.repeat(np.arange(len(spans)), spans)
     begins = np.cumsum(spans) - spans
     slices = pieces.first[piece] + np.arange(len(piece)) - begins[piece]
-    cells = slices * ROOTS + keys[pieces.note[piece]] % 12
-    voices = np.bincount(cells, minlength=count * ROOTS).reshape(-1, ROOTS).astype(np.float64)
-    begun = np.bincount(cells[begins], minlength=count * ROOTS).reshape(-1, ROOTS)
-    lowest = np.full(count, np.iinfo(np.int64).max)
-    np.minimum.at(lowest, slices, keys[pieces.note[piece]])
+    note = pieces.note[piece]
+    cells = slices * ROOTS + timeline.key[note] % 12
+    voices = _count(cells, count)
     total = voices.sum(axis=1)
+    lowest = np.full(count, np.iinfo(np.int64).max)
+    np.minimum.at(lowest, slices, timeline.key[note])
+    fifths = np.full(count * ROOTS, _UNHEARD)
+    fifths[cells] = timeline.fifths[note]
     onsets = np.bincount(timeline.first, minlength=count)[:count]
+    held = voices * np.diff(timeline.time)[:, None]
     return Evidence(
         time=timeline.time,
         level=timeline.level,
         inner=_inner_levels(score, timeline),
         attack=onsets / np.maximum(total, 1.0),
         bass=np.where(total > 0, lowest % 12, -1),
-        held=voices * np.diff(timeline.time)[:, None],
-        begun=begun.astype(np.float64),
+        held=held,
+        begun=_count(cells[begins], count),
         sounding=(voices > 0).astype(np.float64),
+        profile=_profile(held, timeline.time),
+        misspelt=_misspelt(fifths.reshape(-1, ROOTS)),
         cells=cells,
+        fifths=timeline.fifths[note],
         approaches=pieces.approach[piece],
         beginning=begins,
     )
+
+
+def _count(cells: Ints, count: int) -> Floats:
+    """How often each slice and pitch class occurs, shape (n, 12)."""
+    return np.bincount(cells, minlength=count * ROOTS).reshape(-1, ROOTS).astype(np.float64)
 
 
 def _inner_levels(score: Score, timeline: Timeline) -> Ints:
@@ -120,3 +154,28 @@ def _inner_levels(score: Score, timeline: Timeline) -> Ints:
     inner = np.zeros(timeline.count, dtype=np.int64)
     np.maximum.at(inner, place[proper], strength[proper])
     return inner
+
+
+def _profile(held: Floats, time: Floats) -> Floats:
+    """Share of each pitch class in the sounding time around each slice, shape (n, 12)."""
+    sums = np.concatenate([np.zeros((1, ROOTS)), np.cumsum(held, axis=0)])
+    centre = (time[:-1] + time[1:]) / 2
+    first = np.searchsorted(time, centre - NEARBY)
+    last = np.searchsorted(time, centre + NEARBY, side="right") - 1
+    first = np.minimum(first, np.arange(len(centre)))
+    last = np.maximum(last, np.arange(len(centre)) + 1)
+    near = sums[last] - sums[first]
+    return np.asarray(near / np.maximum(near.sum(axis=1, keepdims=True), TOLERANCE))
+
+
+def _misspelt(fifths: Ints) -> Bytes:
+    """Chord tones per state that the notation spells as another interval, shape (n, 120)."""
+    heard = fifths != _UNHEARD
+    wrong = np.zeros((len(fifths), STATES), dtype=np.int8)
+    for state in range(STATES):
+        root = ROOT_OF[state]
+        for interval in TONES[QUALITIES[QUALITY_OF[state]]][1:]:
+            tone = (root + interval) % 12
+            apart = fifths[:, tone] - fifths[:, root] != FIFTHS_OF_INTERVAL[interval]
+            wrong[:, state] += heard[:, root] & heard[:, tone] & apart
+    return wrong

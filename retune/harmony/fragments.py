@@ -5,8 +5,7 @@ Conventions
 * A note is cut once, at the first point of the finest pulse inside it that is stronger than its
   onset. The head tells how the pitch enters, the tail whether it is suspended.
 * A tail begins with a slice; where every voice holds through the point it begins with the next.
-* A step is one or two semitones. Neighbours are notes of the same part that abut; a rest
-  between means there is none.
+* A step is one or two semitones.
 * "weak" means the piece ends at a stronger moment than it begins.
 * Approaches are the ways a non-chord tone can enter and leave; chord tones have one too, but
   there it costs nothing.
@@ -14,12 +13,12 @@ Conventions
 
 from __future__ import annotations
 
-from collections import defaultdict
 from dataclasses import dataclass
 
 import numpy as np
 
 from retune.harmony.metre import grid_points, metric_levels
+from retune.harmony.neighbours import NO_NEIGHBOUR
 from retune.harmony.states import Bools, Ints
 from retune.harmony.timeline import Timeline
 from retune.score.model import Score
@@ -46,8 +45,6 @@ APPROACHES: tuple[str, ...] = (
 """Names of the approaches; weights carry them, and their places number them."""
 
 _PLACE = {name: i for i, name in enumerate(APPROACHES)}
-NO_NEIGHBOUR = 99
-"""Stands for the interval to a neighbour that does not exist."""
 
 
 @dataclass(frozen=True)
@@ -64,37 +61,10 @@ class Pieces:
     approach: Ints
 
 
-def neighbours(score: Score, timeline: Timeline) -> tuple[Ints, Ints]:
-    """Semitones from the abutting note before, and to the one after, in the same part.
-
-    `NO_NEIGHBOUR` where there is none; in a part that plays chords the nearest pitch counts.
-    """
-    ending: dict[tuple[int, int], list[int]] = defaultdict(list)
-    starting: dict[tuple[int, int], list[int]] = defaultdict(list)
-    firsts, lasts = timeline.first.tolist(), timeline.last.tolist()
-    spans = [
-        (score.notes[i].part, score.notes[i].pitch.key, first, last)
-        for i, first, last in zip(timeline.notes.tolist(), firsts, lasts, strict=True)
-    ]
-    for part, key, first, last in spans:
-        ending[part, last].append(key)
-        starting[part, first].append(key)
-    before = np.full(len(spans), NO_NEIGHBOUR)
-    after = np.full(len(spans), NO_NEIGHBOUR)
-    for place, (part, key, first, last) in enumerate(spans):
-        for found, keys in (
-            (before, ending.get((part, first))),
-            (after, starting.get((part, last))),
-        ):
-            if keys is not None:
-                found[place] = min((other - key for other in keys), key=abs)
-    return -before, after
-
-
 def cut_notes(score: Score, timeline: Timeline) -> Pieces:
     """Cut every analysed note into a head and, where it crosses an accent, a tail."""
     cut = _cuts(score, timeline)
-    into, out = neighbours(score, timeline)
+    into, out = timeline.into, timeline.out
     has_tail = cut < timeline.last
     weak = timeline.level[timeline.first] < timeline.level[cut]
     head = _head_approach(into, out, weak)

@@ -23,28 +23,28 @@ _PLAINEST = range(-5, 7)
 """Db to F#: one spelling for each pitch class, for chords that nothing spells."""
 
 
-def spell_root(
-    root: int, quality: Quality, heard: Iterable[tuple[PitchClass, float]]
-) -> PitchClass:
+def spell_root(root: int, quality: Quality, heard: Iterable[tuple[int, float]]) -> PitchClass:
     """Spell a root by what sounds.
 
     Parameters
     ----------
     root : int
         Pitch class, 0 to 11.
-    heard : iterable of (PitchClass, float)
-        Spellings that sound in the chord, with their durations in quarter notes.
+    heard : iterable of (int, float)
+        Places on the line of fifths that sound in the chord, with their quarter notes.
 
-    >>> spell_root(6, Quality.MAJOR, [(PitchClass("A", 1), 1.0), (PitchClass("C", 1), 1.0)]).name
+    A# and C# sound, so the root of the major chord is F#, not Gb:
+
+    >>> spell_root(6, Quality.MAJOR, [(10, 1.0), (7, 1.0)]).name
     'F#'
     """
     direct: dict[int, float] = defaultdict(float)
     implied: dict[int, float] = defaultdict(float)
-    for pitch_class, duration in heard:
-        interval = (pitch_class.chroma - root) % 12
+    for fifths, quarters in heard:
+        interval = (7 * fifths - root) % 12
         if interval == 0:
-            direct[pitch_class.fifths] += duration
+            direct[fifths] += quarters
         elif interval in TONES[quality]:
-            implied[pitch_class.fifths - FIFTHS_OF_INTERVAL[interval]] += duration
+            implied[fifths - FIFTHS_OF_INTERVAL[interval]] += quarters
     votes = direct or implied or {next(f for f in _PLAINEST if 7 * f % 12 == root): 1.0}
     return PitchClass.from_fifths(max(votes, key=lambda f: (votes[f], -abs(f), f)))

@@ -14,53 +14,48 @@ from collections.abc import Sequence
 
 import numpy as np
 
-from retune.harmony.fragments import NO_NEIGHBOUR, neighbours
 from retune.harmony.model import Chord, Degree, Fragment, Role
+from retune.harmony.neighbours import NO_NEIGHBOUR
 from retune.harmony.states import DEGREES, TONES
 from retune.harmony.timeline import Timeline
-from retune.score.model import Score
 
 
-def degree_in(chord: Chord, chroma: int) -> Degree | None:
-    """Which chord tone a pitch class (0 to 11) is, None for a non-chord tone."""
-    if chord.root is None or chord.quality is None:
-        return None
-    interval = (chroma - chord.root.chroma) % 12
-    tones = TONES[chord.quality]
-    return DEGREES[tones.index(interval)] if interval in tones else None
-
-
-def find_roles(score: Score, timeline: Timeline, chords: Sequence[Chord]) -> tuple[Fragment, ...]:
+def find_roles(timeline: Timeline, chords: Sequence[Chord]) -> tuple[Fragment, ...]:
     """Fragments of all analysed notes, sorted by note, then chord."""
-    into, out = (side.tolist() for side in neighbours(score, timeline))
     starts = np.array([chord.first for chord in chords], dtype=np.int64)
     opening = (np.searchsorted(starts, timeline.first, side="right") - 1).tolist()
-    firsts, lasts = timeline.first.tolist(), timeline.last.tolist()
+    tones = [_tones(chord) for chord in chords]
+    spans = [(chord.first, chord.last) for chord in chords]
+    columns = (
+        timeline.notes, timeline.key % 12, timeline.first, timeline.last,
+        timeline.into, timeline.out,
+    )  # fmt: skip
     fragments: list[Fragment] = []
-    for place, note in enumerate(timeline.notes.tolist()):
-        chroma = score.notes[note].pitch.key % 12
-        first, last = firsts[place], lasts[place]
-        index = opening[place]
-        while index < len(chords) and chords[index].first < last:
-            chord = chords[index]
-            degree = degree_in(chord, chroma)
-            if degree is not None:
-                role = Role.CHORD_TONE
-            else:
-                following = chords[index + 1] if index + 1 < len(chords) else None
-                promised = following is not None and degree_in(following, chroma) is not None
-                role = nonchord_role(
-                    into=into[place],
-                    out=out[place],
-                    held_in=first < chord.first,
-                    held_out=last > chord.last,
-                    promised=promised,
-                )
-            fragments.append(
-                Fragment(note, index, max(first, chord.first), min(last, chord.last), role, degree)
-            )
+    for index, note, chroma, first, last, into, out in zip(
+        opening, *(column.tolist() for column in columns), strict=True
+    ):
+        while index < len(chords) and spans[index][0] < last:
+            begin, end = spans[index]
+            degree = tones[index].get(chroma)
+            role = Role.CHORD_TONE
+            if degree is None:
+                promised = index + 1 < len(chords) and chroma in tones[index + 1]
+                role = nonchord_role(into, out, first < begin, last > end, promised)
+            fragment = Fragment(note, index, max(first, begin), min(last, end), role, degree)
+            fragments.append(fragment)
             index += 1
     return tuple(fragments)
+
+
+def _tones(chord: Chord) -> dict[int, Degree]:
+    """Degrees by pitch class; empty in silence."""
+    if chord.root is None or chord.quality is None:
+        return {}
+    root = chord.root.chroma
+    return {
+        (root + interval) % 12: degree
+        for interval, degree in zip(TONES[chord.quality], DEGREES, strict=False)
+    }
 
 
 def nonchord_role(into: int, out: int, held_in: bool, held_out: bool, promised: bool) -> Role:

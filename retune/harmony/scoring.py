@@ -35,6 +35,8 @@ from retune.harmony.weights import Weights
 MAX_SPAN = 16
 MAX_QUARTERS = 4.0
 IMPOSSIBLE = -1e9
+MOST = 80.0
+"""Largest score before exponentiation; float32 ends at e to the 88."""
 
 _Array = TypeVar("_Array", Singles, Ints)
 
@@ -65,18 +67,18 @@ def by_state(degrees: Floats) -> Floats:
 
 @dataclass(frozen=True)
 class SegmentScorer:
-    """Scores of segments from prefix sums; build with `make_scorer`.
+    """Scores of segments, summed up slice by slice; build with `make_scorer`.
 
-    `tones` and `cover` have shape (n + 1, 120), `first` and `last` (n, 120), `absent` (12, 120).
+    `tones`, `cover`, `first` and `last` have shape (n, 120), `absent` (12, 120), `crossed` (5,).
     """
 
     evidence: Evidence
-    tones: Floats
-    cover: Floats
-    first: Floats
-    last: Floats
-    absent: Floats
-    crossed: Floats
+    tones: Singles
+    cover: Singles
+    first: Singles
+    last: Singles
+    absent: Singles
+    crossed: Singles
 
     def heard(self, start: int, stop: int) -> Singles:
         """1 where a pitch class sounds in the segment, shape (stop - start, 16, 12)."""
@@ -94,22 +96,22 @@ class SegmentScorer:
 
     def block(self, start: int, stop: int) -> Singles:
         """Scores of the segments that start in [start, stop), shape (stop - start, 16, 120)."""
-        count = self.evidence.count
         time = self.evidence.time
-        absent = (1 - self.heard(start, stop)) @ self.absent.astype(np.float32)
+        absent = (1 - self.heard(start, stop)) @ self.absent
         crossed = self.crossed[self.strongest(start, stop)]
         scores = np.full((stop - start, MAX_SPAN, STATES), IMPOSSIBLE, dtype=np.float32)
+        running = self.first[start:stop].copy()
+        covering = np.zeros_like(running)
         for span in range(1, MAX_SPAN + 1):
-            size = min(stop, count - span + 1) - start
+            size = min(stop, self.evidence.count - span + 1) - start
             if size <= 0:
                 break
-            head = slice(start, start + size)
             tail = slice(start + span - 1, start + size + span - 1)
-            end = slice(start + span, start + size + span)
-            lasted = time[end] - time[head]
-            part = self.tones[end] - self.tones[head]
-            part += (self.cover[end] - self.cover[head]) / lasted[:, None]
-            part += self.first[head]
+            lasted = time[start + span : start + size + span] - time[start : start + size]
+            running[:size] += self.tones[tail]
+            covering[:size] += self.cover[tail]
+            part = covering[:size] * (1 / lasted).astype(np.float32)[:, None]
+            part += running[:size]
             part += self.last[tail]
             part += absent[:size, span - 1]
             part += crossed[:size, span - 1, None]
@@ -117,6 +119,22 @@ class SegmentScorer:
                 part[lasted > MAX_QUARTERS + TOLERANCE] = IMPOSSIBLE
             scores[:size, span - 1] = part
         return scores
+
+    def odds(self, start: int, stop: int) -> tuple[Singles, Floats]:
+        """Exponentiated `block`, and the natural logs taken out of it slice by slice.
+
+        What is taken out of a slice is the best score it could have alone; it is the same for
+        all segmentations.
+        """
+        scores = self.block(start, stop)
+        rows = stop - start
+        sums = np.concatenate([[0.0], np.cumsum(scores[:, 0].max(axis=1), dtype=np.float64)])
+        ends = np.minimum(np.arange(rows)[:, None] + np.arange(1, MAX_SPAN + 1), rows)
+        scores -= (sums[ends] - sums[:rows, None]).astype(np.float32)[:, :, None]
+        np.minimum(scores, MOST, out=scores)
+        for span in range(2, MAX_SPAN + 1):
+            scores[max(rows + 1 - span, 0) :, span - 1] = IMPOSSIBLE
+        return np.exp(scores, out=scores), np.diff(sums)
 
 
 def _running_max(rows: _Array, start: int, stop: int) -> _Array:
@@ -138,6 +156,7 @@ def make_scorer(evidence: Evidence, weights: Weights) -> SegmentScorer:
         + evidence.begun @ by_state(weights["count"])
         + nonchord @ (DEGREE_OF == NON_CHORD)
     )
+    tones += weights["misspelt"][0] * evidence.misspelt * evidence.length[:, None]
     cover = (evidence.sounding * evidence.length[:, None]) @ by_state(weights["coverage"])
     silent = evidence.bass < 0
     first = by_state(weights["first_bass"])[evidence.bass]
@@ -147,20 +166,24 @@ def make_scorer(evidence: Evidence, weights: Weights) -> SegmentScorer:
     first += (weights["start_level"][evidence.level[:-1]] + weights["attack"][0] * evidence.attack)[
         :, None
     ]
+    first += evidence.sounding @ by_state(weights["first_tones"])
+    first += evidence.profile @ by_state(weights["profile"])
+    last += evidence.sounding @ by_state(weights["last_tones"])
     first += weights["quality"][QUALITY_OF]
     return SegmentScorer(
         evidence,
-        _prefix(tones),
-        _prefix(cover),
-        first,
-        last,
-        by_state(weights["missing"]),
-        weights["crossed_level"],
+        *(
+            rows.astype(np.float32)
+            for rows in (
+                tones,
+                cover,
+                first,
+                last,
+                by_state(weights["missing"]),
+                weights["crossed_level"],
+            )
+        ),
     )
-
-
-def _prefix(rows: Floats) -> Floats:
-    return np.concatenate([np.zeros((1, rows.shape[1])), np.cumsum(rows, axis=0)])
 
 
 def motion_scores(weights: Weights) -> Floats:

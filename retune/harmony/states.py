@@ -17,6 +17,7 @@ from retune.harmony.model import Degree, Quality
 Floats = npt.NDArray[np.float64]
 Singles = npt.NDArray[np.float32]
 Ints = npt.NDArray[np.int64]
+Bytes = npt.NDArray[np.int8]
 Bools = npt.NDArray[np.bool_]
 
 TONES: dict[Quality, tuple[int, ...]] = {

@@ -19,7 +19,9 @@ import numpy as np
 
 from retune.harmony.metre import metric_levels
 from retune.harmony.model import Slice
+from retune.harmony.neighbours import find_neighbours
 from retune.harmony.states import Floats, Ints
+from retune.pitch import Pitch
 from retune.score.model import Score
 
 
@@ -38,6 +40,10 @@ class Timeline:
         Index into `Score.notes` of each analysed note, in the order of the score.
     first, last : int64 arrays, shape (analysed,)
         Slices in which each analysed note sounds, last excluded.
+    key, fifths : int64 arrays, shape (analysed,)
+        MIDI key, and place of the spelling on the line of fifths.
+    into, out : int64 arrays, shape (analysed,)
+        Semitones from the note before and to the note after (see `neighbours`).
     """
 
     boundaries: tuple[Fraction, ...]
@@ -46,6 +52,10 @@ class Timeline:
     notes: Ints
     first: Ints
     last: Ints
+    key: Ints
+    fifths: Ints
+    into: Ints
+    out: Ints
 
     @property
     def count(self) -> int:
@@ -73,24 +83,52 @@ def make_timeline(score: Score) -> Timeline:
     place = {tick: i for i, tick in enumerate(ticks)}
     boundaries = tuple(Fraction(tick, resolution) for tick in ticks)
     time = np.array([tick / resolution for tick in ticks])
+    first = np.array([place[tick] for tick in starts], dtype=np.int64)
+    last = np.array([place[tick] for tick in stops], dtype=np.int64)
+    part = np.array([score.notes[i].part for i in notes], dtype=np.int64)
+    key, fifths = _pitches(score, notes)
+    into, out = find_neighbours(part, key, first, last)
     return Timeline(
         boundaries=boundaries,
         time=time,
         level=metric_levels(score.bars, time),
         notes=np.array(notes, dtype=np.int64),
-        first=np.array([place[tick] for tick in starts], dtype=np.int64),
-        last=np.array([place[tick] for tick in stops], dtype=np.int64),
+        first=first,
+        last=last,
+        key=key,
+        fifths=fifths,
+        into=into,
+        out=out,
     )
+
+
+def _pitches(score: Score, notes: list[int]) -> tuple[Ints, Ints]:
+    """MIDI keys and places on the line of fifths; few pitches make up a piece."""
+    known: dict[Pitch, tuple[int, int]] = {}
+    found = []
+    for i in notes:
+        pitch = score.notes[i].pitch
+        if pitch not in known:
+            known[pitch] = (pitch.key, pitch.pitch_class.fifths)
+        found.append(known[pitch])
+    both = np.array(found, dtype=np.int64).reshape(-1, 2)
+    return both[:, 0], both[:, 1]
 
 
 def make_slices(score: Score, timeline: Timeline) -> tuple[Slice, ...]:
     """The slices as values, notes in part order and low to high in a part."""
     sounding: list[list[int]] = [[] for _ in range(timeline.count)]
     spans = sorted(
-        zip(timeline.notes.tolist(), timeline.first.tolist(), timeline.last.tolist(), strict=True),
-        key=lambda span: (score.notes[span[0]].part, score.notes[span[0]].pitch.key, span[0]),
+        zip(
+            (score.notes[i].part for i in timeline.notes.tolist()),
+            timeline.key.tolist(),
+            timeline.notes.tolist(),
+            timeline.first.tolist(),
+            timeline.last.tolist(),
+            strict=True,
+        )
     )
-    for note, first, last in spans:
+    for _, _, note, first, last in spans:
         for index in range(first, last):
             sounding[index].append(note)
     boundaries = timeline.boundaries

@@ -25,6 +25,7 @@ from scipy.optimize import minimize
 
 import retune.harmony
 from retune.harmony.analysis import analyse_with
+from retune.harmony.chain import Posterior, covered, posterior
 from retune.harmony.evidence import Evidence, gather_evidence
 from retune.harmony.scoring import (
     CLASS_OF,
@@ -58,11 +59,14 @@ ORIGIN = (
 )
 PENALTY = 2.0
 MARGIN = 1.0
+LANES = 8
 EMPHASIS = {"chorales": 6.0, "madrigals": 1.0}
 """Chorales are few and short; a quarter of theirs counts as six of the madrigals'."""
 
 BOUNDS: dict[tuple[str, str], tuple[float | None, float | None]] = {
     ("missing", "seventh"): (None, -1.5),
+    ("first_tones", "seventh"): (0.0, None),
+    ("last_tones", "seventh"): (0.0, None),
     ("duration", "seventh"): (0.0, None),
     ("count", "seventh"): (0.0, None),
     ("coverage", "seventh"): (0.0, None),
@@ -93,149 +97,71 @@ class Example:
     emphasis: float
 
 
-def spans_of(wrong: Array) -> Array:
+def spans_of(wrong: Array) -> NDArray[np.float32]:
     """Wrong quarters of every segment and root, shape (n, 16, 12)."""
     count = len(wrong)
     sums = np.concatenate([np.zeros((1, ROOTS)), np.cumsum(wrong, axis=0)])
     ends = np.minimum(np.arange(count)[:, None] + np.arange(1, MAX_SPAN + 1), count)
-    return np.asarray(sums[ends] - sums[np.arange(count)][:, None, :])
-
-
-class Lockstep:
-    """Forward-backward over several pieces at once, in scaled probabilities."""
-
-    def __init__(self, counts: list[int]) -> None:
-        self.counts = np.array(counts)
-        self.longest = int(self.counts.max())
-
-    def run(self, table: NDArray[np.float32], odds: Array) -> tuple[Array, NDArray, Array]:
-        """Log partition (pieces,), segment marginals like `table`, moves (pieces, 120, 12).
-
-        `table` has shape (pieces, n, 16, 120) and holds exponentiated scores by start.
-        """
-        pieces, longest = len(self.counts), self.longest
-        rows = np.arange(pieces)
-        forward = np.zeros((pieces, longest + 1, ROOTS))
-        fscale = np.zeros((pieces, longest + 1))
-        ending = np.zeros((pieces, longest + 1, STATES))
-        forward[:, 0] = 1.0
-        spans = np.arange(MAX_SPAN)
-        for end in range(1, longest + 1):
-            reach = min(MAX_SPAN, end)
-            starts = end - 1 - spans[:reach]
-            scale = fscale[:, starts]
-            top = scale.max(axis=1, keepdims=True)
-            enter = forward[:, starts] * np.exp(scale - top)[:, :, None]
-            scores = table[:, starts, spans[:reach]].reshape(pieces, reach, ROOTS, -1)
-            arrived = np.einsum("pkr,pkrq->prq", enter, scores).reshape(pieces, STATES)
-            total = arrived.sum(axis=1, keepdims=True)
-            total[total == 0] = 1.0
-            arrived /= total
-            ending[:, end] = arrived
-            fscale[:, end] = top[:, 0] + np.log(total[:, 0])
-            forward[:, end] = arrived @ odds
-        log_total = fscale[rows, self.counts] + np.log(ending[rows, self.counts].sum(axis=1))
-        backward = np.zeros((pieces, longest + 1 + MAX_SPAN, STATES))
-        bscale = np.full((pieces, longest + 1 + MAX_SPAN), -np.inf)
-        beginning = np.zeros((pieces, longest + 1, ROOTS))
-        backward[rows, self.counts] = 1.0
-        bscale[rows, self.counts] = 0.0
-        for start in range(longest - 1, -1, -1):
-            live = start < self.counts
-            scale = bscale[:, start + 1 : start + 1 + MAX_SPAN]
-            top = np.where(live[:, None], scale.max(axis=1, keepdims=True), 0.0)
-            onward = backward[:, start + 1 : start + 1 + MAX_SPAN] * np.exp(scale - top)[:, :, None]
-            begun = np.einsum("pks,pks->ps", onward, table[:, start])
-            by_root = begun.reshape(pieces, ROOTS, -1).sum(axis=2)
-            total = by_root.sum(axis=1, keepdims=True)
-            total[total == 0] = 1.0
-            by_root /= total
-            here = top[:, 0] + np.log(total[:, 0])
-            beginning[:, start] = by_root
-            bscale[live, start] = here[live]
-            backward[live, start] = (by_root @ odds.T)[live]
-        # Marginals: what enters, times the segment, times what follows.
-        shares = np.empty_like(table)
-        for piece in range(pieces):
-            count = self.counts[piece]
-            ends = np.minimum(np.arange(count)[:, None] + 1 + spans, longest + MAX_SPAN)
-            scale = fscale[piece, :count, None] + bscale[piece, ends] - log_total[piece]
-            after = backward[piece, ends] * np.exp(np.minimum(scale, 600.0))[:, :, None]
-            after *= np.repeat(forward[piece, :count], len(QUALITIES), axis=1)[:, None, :]
-            shares[piece, :count] = after * table[piece, :count]
-            shares[piece, count:] = 0.0
-        moves = np.zeros((pieces, STATES, ROOTS))
-        for piece in range(pieces):
-            inner = slice(1, self.counts[piece])
-            scale = fscale[piece, inner] + bscale[piece, inner] - log_total[piece]
-            left = ending[piece, inner] * np.exp(scale)[:, None]
-            moves[piece] = (left.T @ beginning[piece, inner]) * odds
-        return log_total, shares, moves
+    return (sums[ends] - sums[np.arange(count)][:, None, :]).astype(np.float32)
 
 
 class Objective:
     """Penalised softmax-margin loss of a set of examples, with its gradient."""
 
     def __init__(self, examples: list[Example], penalty: float = PENALTY) -> None:
-        self.examples = examples
+        # Pieces of like length share their lanes, so that little of a table is padding.
+        ordered = sorted(examples, key=lambda example: example.evidence.count)
+        self.batches = [ordered[i : i + LANES] for i in range(0, len(ordered), LANES)]
         self.penalty = penalty
-        self.lockstep = Lockstep([example.evidence.count for example in examples])
-        self.wrong = [spans_of(example.wrong).astype(np.float32) for example in examples]
+        self.wrong = {id(example): spans_of(example.wrong) for example in examples}
 
     def __call__(self, vector: Array) -> tuple[float, Array]:
         weights = unpack(vector)
-        longest = self.lockstep.longest
-        shape = (len(self.examples), longest, MAX_SPAN, STATES)
-        free = np.zeros(shape, dtype=np.float32)
-        bound = np.zeros(shape, dtype=np.float32)
-        offsets = np.zeros(len(self.examples))
-        odds = np.exp(motion_scores(weights))
-        scorers = [make_scorer(example.evidence, weights) for example in self.examples]
-        for piece, (scorer, wrong) in enumerate(zip(scorers, self.wrong, strict=True)):
-            scores = scorer.block(0, scorer.evidence.count)
-            # One constant a slice keeps the numbers near one; it cancels between the passes.
-            level = scores[:, 0].max(axis=1)
-            sums = np.concatenate([[0.0], np.cumsum(level)])
-            ends = np.minimum(
-                np.arange(len(level))[:, None] + np.arange(1, MAX_SPAN + 1), len(level)
-            )
-            scores -= (sums[ends] - sums[: len(level), None])[:, :, None].astype(np.float32)
-            table = np.exp(np.minimum(scores, 80.0)).reshape(len(level), MAX_SPAN, ROOTS, -1)
-            free[piece, : len(level)] = (table * np.exp(MARGIN * wrong)[..., None]).reshape(
-                len(level), MAX_SPAN, STATES
-            )
-            bound[piece, : len(level)] = (table * (wrong < 1e-6)[..., None]).reshape(
-                len(level), MAX_SPAN, STATES
-            )
-            offsets[piece] = sums[-1]
-        log_free, shares_free, moves_free = self.lockstep.run(free, odds)
-        log_bound, shares_bound, moves_bound = self.lockstep.run(bound, odds)
-        emphasis = np.array([example.emphasis for example in self.examples])
-        loss = float(emphasis @ (log_free - log_bound)) + self.penalty / 2 * float(vector @ vector)
         gradient: dict[str, Array] = {term: np.zeros(len(names)) for term, names in TERMS.items()}
-        for piece, scorer in enumerate(scorers):
-            count = scorer.evidence.count
-            shares = shares_free[piece, :count] - shares_bound[piece, :count]
-            shares *= np.float32(emphasis[piece])
-            add_segment_gradient(gradient, scorer, shares)
-            moves = emphasis[piece] * (moves_free[piece] - moves_bound[piece])
-            add_motion_gradient(gradient, moves)
+        loss = self.penalty / 2 * float(vector @ vector)
+        for batch in self.batches:
+            loss += self.add_batch(batch, weights, gradient)
         return loss, pack(Weights(gradient)) + self.penalty * vector
+
+    def add_batch(
+        self, batch: list[Example], weights: Weights, gradient: dict[str, Array]
+    ) -> float:
+        """Loss of pieces in step, their gradient added to `gradient`."""
+        counts = np.array([example.evidence.count for example in batch])
+        free = np.zeros((len(batch), int(counts.max()), MAX_SPAN, STATES), dtype=np.float32)
+        bound = np.zeros_like(free)
+        odds = np.exp(motion_scores(weights))
+        scorers = [make_scorer(example.evidence, weights) for example in batch]
+        for piece, (example, scorer) in enumerate(zip(batch, scorers, strict=True)):
+            count = counts[piece]
+            wrong = self.wrong[id(example)]
+            # The constants taken out of each slice are those of both passes, and cancel.
+            table = scorer.odds(0, count)[0].reshape(count, MAX_SPAN, ROOTS, -1)
+            one = (count, MAX_SPAN, STATES)
+            free[piece, :count] = (table * np.exp(MARGIN * wrong)[..., None]).reshape(one)
+            bound[piece, :count] = (table * (wrong < 1e-6)[..., None]).reshape(one)
+        any_root = posterior(free, counts, odds)
+        right_root = posterior(bound, counts, odds)
+        emphasis = np.array([example.emphasis for example in batch])
+        shares = any_root.shares
+        shares -= right_root.shares
+        shares *= emphasis.astype(np.float32)[:, None, None, None]
+        for piece, scorer in enumerate(scorers):
+            add_segment_gradient(gradient, scorer, shares[piece, : counts[piece]])
+        moves = moves_of(any_root, emphasis) - moves_of(right_root, emphasis)
+        add_motion_gradient(gradient, odds * moves)
+        return float(emphasis @ (any_root.log_total - right_root.log_total))
+
+
+def moves_of(found: Posterior, emphasis: Array) -> Array:
+    """Expected moves from state to root over inner boundaries, before the odds, (120, 12)."""
+    leaving = (found.leaving * emphasis[:, None, None])[:, 1:]
+    return np.asarray(leaving.reshape(-1, STATES).T @ found.reaching[:, 1:].reshape(-1, ROOTS))
 
 
 def by_degree(table: Array, places: int) -> Array:
     """Sum a (12, 120) gradient into degrees."""
     return np.bincount(DEGREE_OF.ravel(), table.ravel(), NON_CHORD + 1)[:places]
-
-
-def covering(shares: Array) -> Array:
-    """Spread segment values (n, 16, 120) over the slices they cover, shape (n, 120)."""
-    count = len(shares)
-    change = np.zeros((count + 1, STATES))
-    change[:count] += shares.sum(axis=1)
-    for span in range(1, min(MAX_SPAN, count) + 1):
-        change[span:] -= shares[: count + 1 - span, span - 1]
-    return np.asarray(np.cumsum(change[:-1], axis=0))
 
 
 def add_segment_gradient(
@@ -250,8 +176,8 @@ def add_segment_gradient(
         ends[span - 1 :] += shares[: count + 1 - span, span - 1]
     upto = np.minimum(np.arange(count)[:, None] + np.arange(1, MAX_SPAN + 1), count)
     lasted = evidence.time[upto] - evidence.time[:count, None]
-    cover = covering(shares)
-    rate = covering(shares / lasted.astype(np.float32)[:, :, None])
+    cover = covered(shares[None])[0]
+    rate = covered((shares / lasted.astype(np.float32)[:, :, None])[None])[0]
     gradient["duration"] += by_degree(evidence.held.T @ cover, 4)
     gradient["count"] += by_degree(evidence.begun.T @ cover, 4)
     nonchord = cover @ (DEGREE_OF == NON_CHORD).T
@@ -271,6 +197,10 @@ def add_segment_gradient(
         table = np.zeros((ROOTS, STATES))
         np.add.at(table, evidence.bass[loud], rows[loud])
         gradient[term] += by_degree(table, 5)
+    gradient["first_tones"] += by_degree(evidence.sounding.T @ starts, 5)
+    gradient["last_tones"] += by_degree(evidence.sounding.T @ ends, 5)
+    gradient["profile"] += by_degree(evidence.profile.T @ starts, 4)
+    gradient["misspelt"] += float((cover * evidence.misspelt).sum(axis=1) @ evidence.length)
     begun = starts.sum(axis=1)
     gradient["start_level"] += np.bincount(evidence.level[:-1], begun, 5)
     gradient["attack"] += begun @ evidence.attack
