@@ -12,14 +12,14 @@ from dataclasses import dataclass, field
 from typing import ClassVar
 
 from retune.adapters.midi import RawMidi, write_midi_file
-from retune.errors import OutputError
+from retune.errors import OutputError, Place
 from retune.export.base import OutputFile
 from retune.export.bend import DEFAULT_RANGE
 from retune.export.midi_channels import Channels, PartNeeds, allot
 from retune.export.midi_check import check_midi
 from retune.export.midi_conductor import conductor, slowest_tempo_lost
 from retune.export.midi_plan import PlannedNote, Planner
-from retune.export.midi_tracks import part_tracks
+from retune.export.midi_tracks import CENTRE, part_tracks
 from retune.export.names import numbered, safe_name
 from retune.export.options import require_allowed
 from retune.export.ticks import Ticks, ticks_for
@@ -30,7 +30,6 @@ VOICE_OOHS = 53
 """General MIDI program of sung parts, counting from 0. Its neighbour 52, choir aahs, is up to
 42 cents out of tune in a common sound font, which no just third outlives."""
 
-_CENTRE = 64
 _PAN_WIDTH = 16
 """Voices stand this far to either side at most: enough to tell them apart."""
 
@@ -92,7 +91,7 @@ class MidiExporter:
 def _file_of(take: Take, options: MidiOptions) -> OutputFile:
     tuned, score = take.tuned, take.tuned.score
     if not score.notes:
-        raise OutputError("there is no note to write as MIDI", score.place(score.end))
+        raise OutputError("there is no note to write as MIDI", Place(score.file))
     ticks = ticks_for(tuned)
     planned = Planner(tuned, ticks, options.bend_range, options.glide_ms / 1000.0).notes()
     by_part: list[list[PlannedNote]] = [[] for _ in score.parts]
@@ -123,10 +122,10 @@ def _program(part: Part, voices: int) -> int:
 def _pans(score: Score) -> list[int]:
     """Voices from left to right in score order, accompaniment in the middle."""
     voices = [part.index for part in score.parts if part.tuned]
-    pans = [_CENTRE] * len(score.parts)
+    pans = [CENTRE] * len(score.parts)
     if len(voices) > 1:
         for place, index in enumerate(voices):
-            pans[index] = _CENTRE - _PAN_WIDTH + 2 * _PAN_WIDTH * place // (len(voices) - 1)
+            pans[index] = CENTRE - _PAN_WIDTH + 2 * _PAN_WIDTH * place // (len(voices) - 1)
     return pans
 
 

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 from fractions import Fraction
+from itertools import count, takewhile
 
 from retune.adapters.midi import Meta, MetaType, RawTrack
 from retune.export.midi_text import copyright_bytes, text_bytes
@@ -79,12 +80,13 @@ def sounding_metre(bar: Bar) -> tuple[int, int]:
     where the score has them.
     """
     beats, unit = bar.metre
-    while unit <= _FINEST_BEAT:
-        length = bar.duration * unit / 4
+    # MIDI states the unit as a power of two; a score may have any.
+    coarsest = unit if unit & (unit - 1) == 0 else 4
+    for finer in takewhile(lambda one: one <= _FINEST_BEAT, (coarsest << n for n in count())):
+        length = bar.duration * finer / 4
         if length.denominator == 1 and 0 < length <= 255:
-            return int(length), unit
-        unit *= 2
-    return beats, bar.metre[1]
+            return int(length), finer
+    return beats, coarsest
 
 
 def _time_signature(beats: int, unit: int) -> Meta:

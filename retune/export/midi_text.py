@@ -6,6 +6,8 @@ a blank ends a word, the engraver's hyphens are left out.
 
 from __future__ import annotations
 
+from functools import lru_cache
+
 _RESERVED = str.maketrans({"[": "(", "]": ")", "{": "(", "}": ")", "\\": "/"})
 
 
@@ -24,6 +26,7 @@ def copyright_bytes(text: str) -> bytes:
     return text_bytes(text.replace("©", "(C)"))
 
 
+@lru_cache(maxsize=4096)
 def lyric_bytes(lyric: str) -> bytes:
     """One syllable as RP-017 wants it; empty where there is nothing to show.
 

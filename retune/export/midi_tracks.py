@@ -30,8 +30,12 @@ _RPN_MSB, _RPN_LSB, _DATA_MSB, _DATA_LSB = 101, 100, 6, 38
 _FULL_VOLUME = 100
 """The level General MIDI 2 gives a channel that was told none."""
 
-Timed = tuple[int, int, Event]
-"""Tick, rank among the events of that tick, event."""
+CENTRE = 64
+"""The pan in the middle; 0 is left, 127 right."""
+
+_RANKS = 5
+Timed = tuple[int, Event]
+"""Place in time, which is tick * _RANKS + rank among the events of that tick; event."""
 
 
 def part_tracks(
@@ -53,22 +57,23 @@ def part_tracks(
     timed: list[list[Timed]] = [[] for _ in names]
     for lane in lanes:
         home = lane.notes[0].part
-        pan = pans[home] if len(lane.parts) == 1 else 64
-        timed[home].extend((0, _SETUP, event) for event in _setup(lane, pan, bend_range))
+        pan = pans[home] if len(lane.parts) == 1 else CENTRE
+        timed[home].extend((_SETUP, event) for event in _setup(lane, pan, bend_range))
         for part, tick, bend in _bends(lane):
-            timed[part].append((tick, _BEND, bend))
+            timed[part].append((tick * _RANKS + _BEND, bend))
         for note in lane.notes:
-            timed[note.part].append((note.on, _ON, NoteOn(lane.channel, note.key, note.velocity)))
-            timed[note.part].append((note.off, _OFF, NoteOff(lane.channel, note.key)))
+            events, on, off = timed[note.part], note.on * _RANKS, note.off * _RANKS
+            events.append((on + _ON, NoteOn(lane.channel, note.key, note.velocity)))
+            events.append((off + _OFF, NoteOff(lane.channel, note.key)))
             if words := lyric_bytes(note.lyric):
-                timed[note.part].append((note.on, _LYRIC, Meta(MetaType.LYRIC, words)))
+                events.append((on + _LYRIC, Meta(MetaType.LYRIC, words)))
     return [_track(name, events, end) for name, events in zip(names, timed, strict=True)]
 
 
 def _track(name: str, timed: list[Timed], end: int) -> RawTrack:
-    timed.sort(key=itemgetter(0, 1))
+    timed.sort(key=itemgetter(0))
     title = (0, Meta(MetaType.TRACK_NAME, text_bytes(name)))
-    return RawTrack((title, *((tick, event) for tick, _, event in timed)), end)
+    return RawTrack((title, *[(place // _RANKS, event) for place, event in timed]), end)
 
 
 def _setup(lane: Lane, pan: int, bend_range: int) -> Iterator[Event]:

@@ -376,6 +376,35 @@ def test_compound_metre_clicks_in_dotted_quarters() -> None:
     assert [d.hex() for _, k, d in smf.tracks[0].metas if k == 0x58] == ["06032408"]
 
 
+@pytest.mark.parametrize(
+    ("metre", "duration", "bytes_"),
+    [
+        # FF 58: beats, power of two, clocks a click, 8 (RP-001).
+        ((3, 4), Fraction(3), "03021808"),
+        ((2, 2), Fraction(4), "02013008"),
+        ((9, 8), Fraction(9, 2), "09032408"),
+        ((4, 4), Fraction(7, 2), "07030c08"),
+        ((4, 6), Fraction(3), "03021808"),
+        ((4, 4), Fraction(5, 7), "04021808"),
+    ],
+)
+def test_time_signatures_are_as_long_as_the_bar(
+    metre: tuple[int, int], duration: Fraction, bytes_: str
+) -> None:
+    tuned = tuned_score([sung(0, 0, "C4", (1, 0.0))])
+    bar = replace(tuned.score.bars[0], metre=metre, duration=duration)
+    smf, _ = decoded(replace(tuned, score=replace(tuned.score, bars=(bar,))))
+    assert [d.hex() for _, k, d in smf.tracks[0].metas if k == 0x58] == [bytes_]
+
+
+def test_a_tempo_too_slow_for_midi_is_told() -> None:
+    tuned = tuned_score([sung(0, 0, "C4", (1, 0.0))], tempo=((0, 2),))
+    assert "slowest there is" in note_of_the_file(tuned)
+    smf, _ = decoded(tuned)
+    # FF 51 holds 24 bits.
+    assert [d.hex() for _, k, d in smf.tracks[0].metas if k == 0x51] == ["ffffff"]
+
+
 def test_rehearsal_marks_are_markers() -> None:
     tuned = cadence()
     marked = (tuned.score.bars[0], replace(tuned.score.bars[1], rehearsal="B", key=(-3, "minor")))
