@@ -23,6 +23,7 @@ from retune.tuning.intervals import CONSONANT, Flags, Floats, Ints, consonances,
 from retune.tuning.layout import Layout
 from retune.tuning.policies import Weights
 from retune.tuning.ratios import AUGMENTED_SIXTH, Template, templates
+from retune.tuning.rows import CHOIR
 
 _GRID, _STEP = 46, 2.0
 _CIRCLE = _GRID * _STEP
@@ -128,11 +129,13 @@ class Chooser:
     def _own_costs(self) -> list[Floats]:
         """For each chord: cost of each alternative at each place, shape (alternatives, grid)."""
         layout, weights = self.layout, self.weights
-        length = np.zeros(len(self.options))
-        np.maximum.at(length, layout.chord, np.where(self.tone, layout.length, 0.0))
+        length, every = np.zeros((2, len(self.options)))
+        sung = np.where(self.tone, layout.length, 0.0)
+        np.maximum.at(length, layout.chord, sung)
+        np.add.at(every, layout.chord, sung)
         away = (_PLACES[None, :] - self.places[:, None] + _HALF) % _CIRCLE - _HALF
         anchor = weights.anchor * np.where(self.home, weights.tonic, 1.0)
-        pull = (anchor * length)[:, None] * away**2
+        pull = (anchor * np.maximum(length, every / CHOIR))[:, None] * away**2
         wolf = weights.chord * weights.wolf * length
         sounding: list[set[int]] = [set() for _ in self.options]
         for chord, degree in zip(

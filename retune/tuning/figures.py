@@ -20,6 +20,7 @@ from retune.tuning.layout import Layout
 from retune.tuning.rows import sounding_pairs
 from retune.tuning.targets import Targets
 
+_PLACES = 6
 _LARGE = 5.0
 """Cents; held shifts and repeated notes that miss by more are counted."""
 
@@ -50,6 +51,33 @@ class _Spread:
     @property
     def share_within(self) -> float:
         return self.within / self.weight if self.weight else 1.0
+
+
+def all_figures(
+    score: Score,
+    harmony: Harmony,
+    layout: Layout,
+    targets: Targets,
+    x: Floats,
+    limit: int,
+    tonic: PitchClass,
+    roots: tuple[float | None, ...],
+) -> dict[str, dict[str, Any]]:
+    """Purity, held shift, melody and drift, as the note list holds them."""
+    return {
+        "purity": _rounded(purity(layout, targets, x, limit)),
+        "held_shift": _rounded(held_shift(score, harmony, layout, x)),
+        "melody": _rounded(melody(layout, x, limit)),
+        "drift": _rounded(drift(score, harmony, tonic, roots)),
+    }
+
+
+def _rounded(figures: dict[str, Any]) -> dict[str, Any]:
+    """The same figures, floats to six decimals and without a negative zero."""
+    return {
+        name: round(value, _PLACES) + 0.0 if isinstance(value, float) else value
+        for name, value in figures.items()
+    }
 
 
 def purity(layout: Layout, targets: Targets, x: Floats, limit: int) -> dict[str, float]:

@@ -108,8 +108,9 @@ def _lone_pieces(cell_piece: Ints, cell_slice: Ints, chroma: Ints, slices: int) 
 
 def _melodic_links(first: Ints, last: Ints, note: Ints, part: Ints, key: Ints) -> Ints:
     """Pairs of pieces of notes that abut in one part; of several, the nearest in pitch."""
-    final = np.flatnonzero(np.append(note[1:] != note[:-1], True))
-    initial = np.flatnonzero(np.insert(note[1:] != note[:-1], 0, True))
+    other = note[1:] != note[:-1]
+    final = np.flatnonzero(np.append(other, True)[: len(note)])
+    initial = np.flatnonzero(np.insert(other, 0, True)[: len(note)])
     ending: dict[tuple[int, int], list[int]] = {}
     for piece in final.tolist():
         ending.setdefault((int(part[piece]), int(last[piece])), []).append(piece)

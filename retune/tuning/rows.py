@@ -26,6 +26,8 @@ from retune.tuning.solve import Rows
 from retune.tuning.targets import Targets
 
 _PAIRS_AT_ONCE = 400_000
+CHOIR = 4
+"""Voices to which the weights of links and anchors were set."""
 _WOLF = 1.0
 """Cents from which a template's interval is a wolf of a consonance."""
 
@@ -107,8 +109,13 @@ def melodic_targets(layout: Layout, x: Floats, limit: int) -> Floats:
 
 
 def anchor_weights(layout: Layout, targets: Targets, weights: Weights) -> Floats:
-    """How hard each piece is drawn to its place in the home scale."""
-    share = layout.quarters[layout.cell_slice] / np.maximum(layout.voices[layout.cell_slice], 1)
+    """How hard each piece is drawn to its place in the home scale.
+
+    A slice's weight is shared by its voices, up to `CHOIR`; of more voices each has the same, as
+    their held and melodic links grow in number too.
+    """
+    voices = np.clip(layout.voices, 1, CHOIR)
+    share = (layout.quarters / voices)[layout.cell_slice]
     drawn = layout.per_piece(share) * weights.anchor
     drawn[targets.home] *= weights.tonic
     first = layout.chord == layout.chord[layout.tuned][:1]

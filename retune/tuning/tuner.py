@@ -71,12 +71,7 @@ def tune(score: Score, harmony: Harmony, policy: Policy) -> TunedScore:
         policy=policy,
         notes=assembler.notes(scale, unmoving),
         root_cents=roots,
-        figures={
-            "purity": figures.purity(layout, targets, x, limit),
-            "held_shift": figures.held_shift(score, harmony, layout, x),
-            "melody": figures.melody(layout, x, limit),
-            "drift": figures.drift(score, harmony, tonic, roots),
-        },
+        figures=figures.all_figures(score, harmony, layout, targets, x, limit, tonic, roots),
         findings=found,
     )
 
