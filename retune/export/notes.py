@@ -14,7 +14,7 @@ from fractions import Fraction
 from typing import Any, ClassVar
 
 from retune.export.base import OutputFile
-from retune.export.csvtext import Cell, csv_bytes
+from retune.export.csvtext import Cell, csv_bytes, number_cell, text_cell
 from retune.export.names import safe_name
 from retune.export.places import Places, rounded
 from retune.harmony.model import Chord
@@ -177,28 +177,31 @@ def _rows(
     tuned: TunedScore, places: Places, chords: list[_Object], notes: list[_Object]
 ) -> Iterator[Sequence[Cell]]:
     """A row a segment: its own times and place, and what its note and chord are."""
-    names = [part.name for part in tuned.score.parts]
+    names = [text_cell(part.name) for part in tuned.score.parts]
     chord_cells = [(one["root"], one["quality"], one["symbol"]) for one in chords]
     for index, (tuned_note, note) in enumerate(zip(tuned.notes, notes, strict=True)):
+        part, lyric = note["part"], text_cell(note["lyric"])
         for segment, shown in zip(tuned_note.segments, note["segments"], strict=True):
+            bar, beat = places.bar_and_beat(segment.onset)
             yield (
                 index,
-                note["part"],
-                names[note["part"]],
+                part,
+                names[part],
                 shown["onset"],
                 shown["duration"],
-                *places.bar_and_beat(segment.onset),
+                text_cell(bar),
+                beat,
                 note["pitch"],
                 note["key"],
-                note["lyric"],
-                shown["seconds"],
-                shown["length_seconds"],
+                lyric,
+                number_cell(shown["seconds"]),
+                number_cell(shown["length_seconds"]),
                 segment.chord,
                 *chord_cells[segment.chord],
                 shown["role"],
                 shown["ratio"],
-                shown["cents"],
-                shown["hz"],
+                number_cell(shown["cents"]),
+                number_cell(shown["hz"]),
             )
 
 

@@ -20,7 +20,7 @@ def rounded(value: float) -> float:
 
 
 class Places:
-    """Looks up bar and beat once for each time, since many notes share one."""
+    """Looks up bar, beat and seconds once for each time, since many notes share one."""
 
     def __init__(self, tuned: TunedScore) -> None:
         self._score = tuned.score

@@ -18,7 +18,7 @@ from retune.errors import OutputError
 from retune.export.base import OutputFile
 from retune.export.chord_tunings import ChordTunings, alike, chord_tunings
 from retune.export.clusters import best_groups
-from retune.export.csvtext import Cell, csv_bytes
+from retune.export.csvtext import Cell, csv_bytes, number_cell, text_cell
 from retune.export.names import safe_name
 from retune.export.options import require_allowed
 from retune.export.places import Places
@@ -179,14 +179,18 @@ class _Piece:
             indices = list(run)
             first, last = chords[indices[0]], chords[indices[-1]]
             symbols = dict.fromkeys(chord_symbol(chords[index]) for index in indices)
+            bar, beat = places.bar_and_beat(first.onset)
+            start, length = places.seconds(first.onset, last.end)
             yield (
                 number + 1,
-                f"{names[number]}{SCL}",
+                text_cell(f"{names[number]}{SCL}"),
                 " ".join(symbols),
                 str(first.onset),
                 str(last.end - first.onset),
-                *places.bar_and_beat(first.onset),
-                *places.seconds(first.onset, last.end),
+                text_cell(bar),
+                beat,
+                number_cell(start),
+                number_cell(length),
             )
 
 
