@@ -182,7 +182,8 @@ class Chooser:
 
     def _stepped(self, left: Ints, right: Ints, change: Floats) -> Floats:
         distance = self.layout.key[right] - self.layout.key[left]
-        sizes = steps(self.limit)[distance % 12]
+        rising = np.where(distance < 0, -1.0, 1.0)
+        sizes = rising[:, None] * steps(self.limit)[np.abs(distance) % 12]
         missed = (change[:, :, None] - sizes[:, None, :]) ** 2
         again = (distance == 0)[:, None]
         return self.weights.melodic * np.where(

@@ -15,7 +15,7 @@ import numpy as np
 from retune.harmony.model import Harmony
 from retune.pitch import PitchClass
 from retune.score.model import Score
-from retune.tuning.intervals import CONSONANT, Floats, consonances, nearest, steps
+from retune.tuning.intervals import CONSONANT, Floats, consonances, nearest, nearest_directed, steps
 from retune.tuning.layout import Layout
 from retune.tuning.rows import sounding_pairs
 from retune.tuning.targets import Targets
@@ -135,7 +135,7 @@ def melody(layout: Layout, x: Floats, limit: int) -> dict[str, Any]:
     apart = layout.key[right] - layout.key[left]
     cents = x[right] - x[left]
     again = apart == 0
-    missed = np.abs(cents - nearest(steps(limit), apart % 12, cents))[~again]
+    missed = np.abs(cents - nearest_directed(steps(limit), apart, cents))[~again]
     repeated = np.abs(cents[again])
     return {
         "mean_cents": float(missed.mean()) if len(missed) else 0.0,

@@ -4,7 +4,7 @@ Conventions
 -----------
 * Tables are float64 arrays indexed by semitones 0 to 11; every value is the distance in cents of
   one just size from that many tempered semitones, padded by repetition to equal length.
-* An interval's direction does not matter: sizes are taken upwards.
+* Sizes are taken upwards; a falling interval is measured as the rising one of its size.
 """
 
 from __future__ import annotations
@@ -31,21 +31,9 @@ _PURE: dict[int, dict[int, str]] = {
     5: {0: "1", 3: "6/5", 4: "5/4", 5: "4/3", 7: "3/2", 8: "8/5", 9: "5/3"},
     7: {0: "1", 3: "6/5 7/6", 4: "5/4", 5: "4/3", 7: "3/2", 8: "8/5", 9: "5/3 12/7"},
 }
-# Every spelling of a melodic or dissonant interval in common use, by semitones.
-_SPELLINGS: dict[int, tuple[int, ...]] = {
-    0: (0,),
-    1: (-5, 7),
-    2: (2,),
-    3: (-3, 9),
-    4: (4,),
-    5: (-1,),
-    6: (6, -6),
-    7: (1,),
-    8: (-4, 8),
-    9: (3,),
-    10: (-2, 10),
-    11: (5, -7),
-}
+# By semitones: the spellings whose just sizes a step or leap may take. Rarer ones, such as the
+# augmented second, are heard by their size.
+_SPELLINGS = ((0,), (-5, 7), (2,), (-3,), (4,), (-1,), (6, -6), (1,), (-4,), (3,), (-2,), (5,))
 
 
 def _table(rows: list[list[float]]) -> Floats:
@@ -85,8 +73,8 @@ def steps(limit: int) -> Floats:
     """
     return _table(
         [
-            [cents for fifths in _SPELLINGS[count] for cents in _offsets(fifths, limit)]
-            for count in range(12)
+            [cents for fifths in spellings for cents in _offsets(fifths, limit)]
+            for spellings in _SPELLINGS
         ]
     )
 
@@ -103,4 +91,11 @@ def nearest(table: Floats, semitones: Ints, cents: Floats) -> Floats:
     choices = table[semitones]
     best = np.abs(choices - cents[:, None]).argmin(axis=1)
     found: Floats = choices[np.arange(len(semitones)), best]
+    return found
+
+
+def nearest_directed(table: Floats, distance: Ints, cents: Floats) -> Floats:
+    """As `nearest`, for signed distances in semitones and the change that goes with them."""
+    rising = np.where(distance < 0, -1.0, 1.0)
+    found: Floats = rising * nearest(table, np.abs(distance) % 12, rising * cents)
     return found

@@ -6,6 +6,7 @@ import math
 from dataclasses import dataclass
 from enum import StrEnum
 
+from retune.errors import WishError
 from retune.pitch import PitchClass
 from retune.units import STANDARD_REFERENCE_HZ
 
@@ -14,6 +15,8 @@ DEFAULT_HELD_SHIFT = 4.9
 
 DEFAULT_DRIFT_WITHIN = 22.0
 """Cents; about a comma."""
+
+PRIME_LIMITS = (3, 5, 7)
 
 NO_BOUND = math.inf
 """`Policy.held_shift` for notes that may move as far as the chords lead."""
@@ -82,6 +85,11 @@ class Policy:
         spelling on the home tonic.
     accompaniment_pull : Pull
         Which notes of the voices are drawn to them.
+
+    Raises
+    ------
+    WishError
+        For a prime limit, a number of cents or a frequency that cannot be.
     """
 
     prime_limit: int = 5
@@ -94,3 +102,13 @@ class Policy:
     melody: str | None = None
     accompaniment_tuning: FixedTuning | None = EQUAL_TUNING
     accompaniment_pull: Pull = Pull.ROOTS
+
+    def __post_init__(self) -> None:
+        if self.prime_limit not in PRIME_LIMITS:
+            raise WishError(f"no prime limit {self.prime_limit}", hint="Choose 3, 5 or 7")
+        if not self.held_shift >= 0.0:
+            raise WishError(f"a held shift of {self.held_shift} cents", hint="0 or more is needed")
+        if not 0.0 <= self.drift_within < math.inf:
+            raise WishError(f"drift within {self.drift_within} cents", hint="0 or more is needed")
+        if not 0.0 < self.reference_hz < math.inf:
+            raise WishError(f"a reference pitch of {self.reference_hz} Hz", hint="440 is usual")

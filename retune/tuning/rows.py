@@ -18,6 +18,7 @@ from retune.tuning.intervals import (
     Ints,
     consonances,
     nearest,
+    nearest_directed,
     steps,
 )
 from retune.tuning.layout import Layout
@@ -65,7 +66,8 @@ def chord_rows(
 ) -> Iterator[tuple[Ints, Ints, Floats, Floats]]:
     """Left piece, right piece, weight and target of everything that sounds together."""
     for left, right, quarters in sounding_pairs(layout):
-        apart = (layout.key[right] - layout.key[left]) % 12
+        distance = layout.key[right] - layout.key[left]
+        apart = distance % 12
         unison = apart == 0
         consonant = CONSONANT[apart]
         tones = targets.tone[left] & targets.tone[right]
@@ -74,7 +76,7 @@ def chord_rows(
         pure = nearest(consonances(limit), apart, np.where(tones, just, placed))
         wolf = tones & consonant & (np.abs(pure - just) > _WOLF)
         drawn = np.where(wolf, weights.pure_share * pure + (1 - weights.pure_share) * just, just)
-        other = np.where(consonant, pure, nearest(steps(limit), apart, placed))
+        other = np.where(consonant, pure, nearest_directed(steps(limit), distance, placed))
         full = np.where(consonant, 1.0, weights.dissonant) * np.where(
             targets.triad[left] & consonant, weights.triad, 1.0
         )
@@ -104,7 +106,7 @@ def melodic_targets(layout: Layout, x: Floats, limit: int) -> Floats:
     """The just size nearest to each melodic link as x stands; 0 for repeated notes."""
     left, right = layout.melodic.T
     distance = layout.key[right] - layout.key[left]
-    size = nearest(steps(limit), distance % 12, x[right] - x[left])
+    size = nearest_directed(steps(limit), distance, x[right] - x[left])
     return np.where(distance == 0, 0.0, size)
 
 

@@ -34,18 +34,40 @@ PURE = {
 STEPS = {
     1: "16/15 25/24 27/25 135/128",
     2: "9/8 10/9",
-    3: "6/5 32/27 75/64",
+    3: "6/5 32/27",
     4: "5/4",
     5: "4/3 27/20",
     6: "45/32 64/45 25/18 36/25",
     7: "3/2 40/27",
-    8: "8/5 25/16",
+    8: "8/5",
     9: "5/3 27/16",
-    10: "16/9 9/5 225/128",
-    11: "15/8 50/27 48/25",
-    12: "2/1",
+    10: "16/9 9/5",
+    11: "15/8 50/27",
 }
-SEPTIMAL_STEPS = {1: "21/20 15/14", 2: "8/7", 3: "7/6", 6: "7/5 10/7", 9: "12/7", 10: "7/4"}
+SEPTIMAL_STEPS = {
+    1: "21/20 15/14",
+    2: "8/7",
+    3: "7/6",
+    5: "21/16",
+    6: "7/5 10/7",
+    7: "32/21",
+    9: "12/7",
+    10: "7/4",
+    11: "28/15 40/21",
+}
+PYTHAGOREAN_STEPS = {
+    1: "256/243 2187/2048",
+    2: "9/8",
+    3: "32/27",
+    4: "81/64",
+    5: "4/3",
+    6: "729/512 1024/729",
+    7: "3/2",
+    8: "128/81",
+    9: "27/16",
+    10: "16/9",
+    11: "243/128",
+}
 TRIADS = (Quality.MAJOR, Quality.MINOR)
 
 
@@ -60,11 +82,8 @@ def _sizes(table: dict[int, str]) -> dict[int, list[float]]:
 
 
 _PURE = {limit: _sizes(table) for limit, table in PURE.items()}
-_STEPS = _sizes(STEPS)
-_STEPS_7 = {
-    steps: [*sizes, *map(cents, SEPTIMAL_STEPS.get(steps, "").split())]
-    for steps, sizes in _STEPS.items()
-}
+_SEVENTH_STEPS = {steps: f"{text} {SEPTIMAL_STEPS.get(steps, '')}" for steps, text in STEPS.items()}
+_STEPS = {3: _sizes(PYTHAGOREAN_STEPS), 5: _sizes(STEPS), 7: _sizes(_SEVENTH_STEPS)}
 
 
 def missed_pure(semitones: int, deviation: float, limit: int = 5) -> float | None:
@@ -78,11 +97,9 @@ def missed_pure(semitones: int, deviation: float, limit: int = 5) -> float | Non
 
 def missed_step(semitones: int, deviation: float, limit: int = 5) -> float:
     """Cents by which a melodic interval of `semitones` > 0 misses the nearest just size."""
-    octaves, steps = divmod(semitones, 12)
-    sizes = {0: [0.0]} | (_STEPS_7 if limit == 7 else _STEPS)
-    if steps == 0 and octaves == 0:
-        return abs(deviation)
-    return min(abs(100.0 * steps + deviation - size) for size in sizes[steps])
+    steps = semitones % 12
+    sizes = _STEPS[limit].get(steps, [0.0])
+    return min(abs(100.0 * steps + deviation - size) for size in sizes)
 
 
 @dataclass

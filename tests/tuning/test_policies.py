@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 from dataclasses import replace
 from fractions import Fraction
+from typing import Any
 
 import pytest
 
@@ -128,6 +129,21 @@ def test_a_tempered_chord_has_no_ratio_and_is_listed() -> None:
 def test_unknown_melody_names_the_parts() -> None:
     with pytest.raises(WishError, match="Part 1, Part 2, Part 3, Part 4"):
         tune(*build(CADENCE, VOICES), Policy(melody="Lead"))
+
+
+@pytest.mark.parametrize(
+    "wrong",
+    [
+        {"prime_limit": 11},
+        {"held_shift": -1.0},
+        {"held_shift": math.nan},
+        {"drift_within": math.inf},
+        {"reference_hz": 0.0},
+    ],
+)
+def test_wishes_that_cannot_be(wrong: dict[str, Any]) -> None:
+    with pytest.raises(WishError):
+        Policy(**wrong)
 
 
 def test_the_melody_is_smoothest() -> None:

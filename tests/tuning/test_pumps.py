@@ -63,13 +63,13 @@ def test_the_cap_is_exact(drift: Drift, cap: float) -> None:
             assert max(held_shifts(tuned), default=0.0) == 0.0
 
 
-@pytest.mark.parametrize("bound", [5.0, 15.0, 22.0])
+@pytest.mark.parametrize("bound", [0.0, 5.0, 15.0, 22.0])
 def test_within_keeps_the_tonic_inside_its_bound(bound: float) -> None:
     tonic = homes(tune(*pump(8), Policy(drift=Drift.WITHIN, drift_within=bound)))
     assert max(abs(cents) for cents in tonic) <= bound + 0.05
     assert max(abs(cents - tonic[0]) for cents in tonic) <= bound + 0.05
     # Eight cycles would sink 172 cents, so the bound is what holds it.
-    assert max(abs(cents) for cents in tonic) > bound / 2
+    assert max(abs(cents) for cents in tonic) > bound / 2 - 1e-3
 
 
 def test_the_law_of_the_pump() -> None:
