@@ -56,7 +56,7 @@ class Weights:
         A voice drawn to a part that cannot move.
     """
 
-    chord: float = 3.0
+    chord: float = 4.0
     triad: float = 2.0
     dissonant: float = 0.2
     pure_share: float = 0.5
@@ -65,7 +65,7 @@ class Weights:
     clash: float = 0.02
     held: float = 1.0
     melodic: float = 0.1
-    repeated: float = 3.0
+    repeated: float = 5.0
     lead: float = 10.0
     lone: float = 5.0
     anchor: float = 0.05
