@@ -30,21 +30,30 @@ _EQUAL = 1e-6
 
 
 def root_cents(
-    layout: Layout, harmony: Harmony, targets: Targets, x: Floats, unsung: CentsOf
+    layout: Layout, harmony: Harmony, targets: Targets, x: Floats, scale: CentsOf
 ) -> tuple[float | None, ...]:
     """Tuned cents of each chord's root; None where nothing sounds.
 
-    The mean of the voices that sing it, else what the other chord tones say of it, else any
-    other part that sounds it, else its cents in `unsung`, the tuning of the surroundings.
+    The mean of the voices that sing it, else what the other chord tones say of it, else of
+    another part that sounds it, else its place in the home `scale`, as far from there as the
+    voices that sing alone are.
     """
     count = len(harmony.chords)
-    found = np.full(count, np.nan)
+    scale_roots = np.array([scale(c.root) if c.root else 0.0 for c in harmony.chords])
     sung = targets.tone & layout.tuned
-    for chosen in (sung & (layout.degree == 0), sung, layout.degree == 0):
-        mean = _chord_means(layout, chosen, x - targets.just, count)
-        found = np.where(np.isnan(found), mean, found)
+    above, alone = x - targets.just, x - targets.place + scale_roots[layout.chord]
+    found = scale_roots
+    # From the last resort to the best witness.
+    for chosen, values in (
+        (layout.tuned, alone),
+        (layout.degree == 0, x),
+        (sung, above),
+        (sung & (layout.degree == 0), above),
+    ):
+        mean = _chord_means(layout, chosen, values, count)
+        found = np.where(np.isnan(mean), found, mean)
     return tuple(
-        None if chord.root is None else unsung(chord.root) if np.isnan(cents) else float(cents)
+        None if chord.root is None else float(cents)
         for chord, cents in zip(harmony.chords, found, strict=True)
     )
 

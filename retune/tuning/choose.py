@@ -11,19 +11,17 @@ Conventions
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
-from functools import cache
-from itertools import combinations
 
 import numpy as np
 
-from retune.harmony.model import Degree, Harmony
-from retune.score.model import Score
-from retune.tuning.intervals import CONSONANT, Flags, Floats, Ints, consonances, nearest, steps
+from retune.tuning.alternatives import Options, is_exception, wolves
+from retune.tuning.intervals import Flags, Floats, Ints, steps
 from retune.tuning.layout import Layout
 from retune.tuning.policies import Weights
-from retune.tuning.ratios import AUGMENTED_SIXTH, Template, templates
-from retune.tuning.rows import CHOIR
+from retune.tuning.ratios import Template
+from retune.tuning.rows import CHOIR, held_weights, melodic_weights
 
 _GRID, _STEP = 46, 2.0
 _CIRCLE = _GRID * _STEP
@@ -36,12 +34,15 @@ _STEEP = 100.0
 """Weight of what a held shift exceeds its cap by."""
 _SCANT = 0.02
 """Weight of a root's departure from the scale's own step, which decides where nothing else does."""
-_EXCEPTION = 5000.0
+_EXCEPTION = 20_000.0
 """Cost of a dominant seventh or augmented sixth that is not 4:5:6:7 though limit 7 is in force:
-less than a held note over its cap by 7 cents, more than a few repeated notes by a comma."""
-_DOMINANT = (0, 4, 7, 10)
+less than a held note that would move by 27 cents, more than several repeated ones."""
 _LINKS_AT_ONCE = 20_000
 _DEGREES = 5  # four degrees, and one that stands for none
+
+
+Cost = Callable[[Floats, Floats, Ints], Floats]
+"""Weight, change in cents and distance in semitones of links -> cost at every change of root."""
 
 
 @dataclass(frozen=True)
@@ -50,44 +51,6 @@ class Choice:
 
     templates: tuple[Template | None, ...]
     roots: Floats
-
-
-def sixth_chords(score: Score, harmony: Harmony) -> frozenset[int]:
-    """Chords whose seventh is spelled as an augmented sixth above the root."""
-    found = set()
-    for fragment in harmony.fragments:
-        if fragment.degree is Degree.SEVENTH:
-            root = harmony.chords[fragment.chord].root
-            pitch = score.notes[fragment.note].pitch.pitch_class
-            if root is not None and pitch.fifths - root.fifths == AUGMENTED_SIXTH:
-                found.add(fragment.chord)
-    return frozenset(found)
-
-
-@cache
-def wolves(template: Template, degrees: frozenset[int], limit: int) -> float:
-    """Sum of the squared cents by which the sounding consonances of a template are impure.
-
-    >>> from retune.harmony.model import Quality
-    >>> ninth, sixteen = templates(Quality.DOMINANT_SEVENTH, 5)
-    >>> wolves(ninth, frozenset({0, 1, 2, 3}), 5)
-    0.0
-    >>> round(wolves(sixteen, frozenset({0, 1, 2, 3}), 5) ** 0.5, 3)
-    21.506
-    """
-    total = 0.0
-    for low, high in combinations(sorted(degrees), 2):
-        apart = (template.semitones[high] - template.semitones[low]) % 12
-        if CONSONANT[apart]:
-            cents = template.cents[high] - template.cents[low]
-            pure = nearest(consonances(limit), np.array([apart]), np.array([cents]))[0]
-            total += round(abs(cents - float(pure)), 9) ** 2
-    return total
-
-
-def is_exception(template: Template, first: Template) -> bool:
-    """Whether a dominant seventh is not 4:5:6:7 where that is preferred."""
-    return template.semitones == _DOMINANT and template.limit < 7 <= first.limit
 
 
 class Chooser:
@@ -101,20 +64,25 @@ class Chooser:
         Each root's place in the home scale.
     home : ndarray of bool, shape (chords,)
         Chords on the home tonic.
+    cap : float
+        The most a held note may move, in cents.
+    lead : int or None
+        Index of the part kept smoothest.
     """
 
     def __init__(
         self,
         layout: Layout,
-        options: list[tuple[Template, ...]],
+        options: Options,
         places: Floats,
         home: Flags,
         weights: Weights,
         limit: int,
         cap: float,
+        lead: int | None,
     ) -> None:
-        self.layout, self.options, self.places = layout, options, places
-        self.home = home
+        self.layout, self.options = layout, options
+        self.places, self.home, self.lead = places, home, lead
         self.weights, self.limit, self.cap = weights, limit, cap
         self.count = np.array([max(len(one), 1) for one in options], dtype=np.int64)
         widest = int(self.count.max(initial=1))
@@ -151,7 +119,7 @@ class Chooser:
             found.append(pull[chord][None, :] + badness[:, None])
         return found
 
-    def _link_costs(self, links: Ints, kind: str) -> Floats:
+    def _link_costs(self, links: Ints, cost: Cost, weight: Floats) -> Floats:
         """Cost of links between neighbouring chords, by pair of alternatives and change of root.
 
         Returns an array of shape (pairs of alternatives of all boundaries, grid).
@@ -159,7 +127,7 @@ class Chooser:
         layout = self.layout
         left, right = links.T
         used = self.tone[left] & self.tone[right] & (layout.chord[right] == layout.chord[left] + 1)
-        links = links[used]
+        links, weight = links[used], weight[used]
         total = np.zeros((int(self.first_pair[-1]), _GRID))
         for start in range(0, len(links), _LINKS_AT_ONCE):
             left, right = links[start : start + _LINKS_AT_ONCE].T
@@ -167,34 +135,38 @@ class Chooser:
             pairs = self.first_pair[before + 1] - self.first_pair[before]
             link = np.repeat(np.arange(len(left)), pairs)
             number = np.arange(len(link)) - (np.cumsum(pairs) - pairs)[link]
-            left, right, before = left[link], right[link], before[link]
+            before = before[link]
             one, other = np.divmod(number, self.count[before + 1])
-            own = self.cents[before, one, layout.degree[left]]
-            just = self.cents[before + 1, other, layout.degree[right]] - own
+            own = self.cents[before, one, layout.degree[left[link]]]
+            just = self.cents[before + 1, other, layout.degree[right[link]]] - own
             change = just[:, None] + _CHANGES[None, :]
-            cost = self._held(change) if kind == "held" else self._stepped(left, right, change)
-            np.add.at(total, self.first_pair[before] + number, cost)
+            distance = (layout.key[right] - layout.key[left])[link]
+            costs = cost(weight[start + link, None], change, distance)
+            np.add.at(total, self.first_pair[before] + number, costs)
         return total
 
-    def _held(self, change: Floats) -> Floats:
+    def _held(self, weight: Floats, change: Floats, distance: Ints) -> Floats:
         beyond = np.maximum(np.abs(change) - self.cap, 0.0)
-        return self.weights.held * change**2 + _STEEP * beyond**2
+        costs: Floats = weight * change**2 + _STEEP * beyond**2
+        return costs
 
-    def _stepped(self, left: Ints, right: Ints, change: Floats) -> Floats:
-        distance = self.layout.key[right] - self.layout.key[left]
+    def _stepped(self, weight: Floats, change: Floats, distance: Ints) -> Floats:
+        """Squared distance from the nearest just step; from the same pitch for repeated notes."""
         rising = np.where(distance < 0, -1.0, 1.0)
         sizes = rising[:, None] * steps(self.limit)[np.abs(distance) % 12]
         missed = (change[:, :, None] - sizes[:, None, :]) ** 2
-        again = (distance == 0)[:, None]
-        return self.weights.melodic * np.where(
-            again, self.weights.repeated / self.weights.melodic * change**2, missed.min(axis=2)
-        )
+        costs: Floats = weight * missed.min(axis=2)
+        return costs
 
-    def search(self) -> tuple[list[int], Floats]:
-        """The cheapest path: which alternative each chord takes, and its root in cents."""
+    def search(self) -> Choice:
+        """The cheapest path."""
+        if not self.options:
+            return Choice((), np.zeros(0))
         own = self._own_costs()
-        held, melodic = self.layout.held, self.layout.melodic
-        links = self._link_costs(held, "held") + self._link_costs(melodic, "melodic")
+        layout, weights, lead = self.layout, self.weights, self.lead
+        links = self._link_costs(layout.held, self._held, held_weights(layout, weights, lead))
+        melodic = melodic_weights(layout, weights, lead)
+        links += self._link_costs(layout.melodic, self._stepped, melodic)
         expected = np.diff(self.places)
         best, back = own[0], []
         for chord in range(1, len(own)):
@@ -208,7 +180,8 @@ class Chooser:
             best = np.take_along_axis(flat, chosen[None], axis=0)[0] + own[chord]
         return self._traced(best, back)
 
-    def _traced(self, best: Floats, back: list[Ints]) -> tuple[list[int], Floats]:
+    def _traced(self, best: Floats, back: list[Ints]) -> Choice:
+        """The path that ends cheapest, from the last chord back."""
         template, place = divmod(int(best.argmin()), _GRID)
         path = [(template, place)]
         for chosen in reversed(back):
@@ -218,41 +191,8 @@ class Chooser:
         places = np.array([one[1] for one in path])
         changes = _CHANGES[(places[1:] - places[:-1]) % _GRID]
         roots = _PLACES[places[0]] + np.concatenate(([0.0], np.cumsum(changes)))
-        return [one[0] for one in path], roots
-
-
-Options = list[tuple[Template, ...]]
-"""The alternatives of each chord."""
-
-
-def options_of(score: Score, harmony: Harmony, limit: int) -> Options:
-    """The templates each chord may take, the preferred one first; none where nothing sounds."""
-    sixths = sixth_chords(score, harmony)
-    return [
-        templates(chord.quality, limit, chord.index in sixths) if chord.quality else ()
-        for chord in harmony.chords
-    ]
-
-
-def preferred(options: Options) -> tuple[Template | None, ...]:
-    """The first alternative of each chord."""
-    return tuple(next(iter(one), None) for one in options)
-
-
-def choose(
-    layout: Layout,
-    options: Options,
-    places: Floats,
-    home: Flags,
-    weights: Weights,
-    limit: int,
-    cap: float,
-) -> Choice:
-    """A template and a rough root for each chord of a piece; parameters as in `Chooser`."""
-    if not options:
-        return Choice((), np.zeros(0))
-    chosen, roots = Chooser(layout, options, places, home, weights, limit, cap).search()
-    picked = tuple(
-        choices[index] if choices else None for choices, index in zip(options, chosen, strict=True)
-    )
-    return Choice(picked, roots)
+        picked = tuple(
+            choices[index] if choices else None
+            for choices, (index, _) in zip(self.options, path, strict=True)
+        )
+        return Choice(picked, roots)

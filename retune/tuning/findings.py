@@ -9,7 +9,7 @@ import numpy as np
 from retune.errors import Finding, Weight
 from retune.harmony.model import Chord, Harmony
 from retune.score.model import Score
-from retune.tuning.choose import Options, is_exception
+from retune.tuning.alternatives import Options, is_exception
 from retune.tuning.intervals import Floats
 from retune.tuning.layout import Layout
 from retune.tuning.ratios import Template

@@ -9,8 +9,9 @@ from retune.harmony.model import Harmony
 from retune.pitch import PitchClass
 from retune.score.model import Score
 from retune.tuning import figures
+from retune.tuning.alternatives import options_of, preferred
 from retune.tuning.assemble import Assembler, root_cents
-from retune.tuning.choose import choose, options_of, preferred
+from retune.tuning.choose import Chooser
 from retune.tuning.findings import findings
 from retune.tuning.fixed import CentsOf, accompaniment, temperament
 from retune.tuning.intervals import Floats
@@ -51,18 +52,19 @@ def tune(score: Score, harmony: Harmony, policy: Policy) -> TunedScore:
     fixed = _piece_cents(score, layout, unmoving)
     if tempered is None:
         home = np.array([chord.root == tonic for chord in harmony.chords], dtype=bool)
-        weights = WEIGHTS[policy.drift]
-        choice = choose(layout, options, targets.roots, home, weights, limit, policy.held_shift)
+        weights, cap = WEIGHTS[policy.drift], policy.held_shift
+        choice = Chooser(layout, options, targets.roots, home, weights, limit, cap, lead).search()
         targets = aim(layout, harmony, choice.templates, tonic, limit)
         start = targets.place + (choice.roots - targets.roots)[layout.chord]
         root = np.array([unmoving(c.root) if c.root else 0.0 for c in harmony.chords])
         x = place(Problem(layout, targets, policy, start, fixed, root[layout.chord], lead))
-        chosen, cap = choice.templates, policy.held_shift
-        found = findings(score, harmony, layout, options, chosen, x, cap)
+        found = findings(score, harmony, layout, options, choice.templates, x, cap)
+        scale = _home_scale(tonic, limit)
+        roots = root_cents(layout, harmony, targets, x, scale)
     else:
         x = np.where(layout.tuned, _piece_cents(score, layout, tempered), fixed)
-    scale = tempered or _home_scale(tonic, policy.prime_limit)
-    roots = root_cents(layout, harmony, targets, x, scale)
+        scale = tempered
+        roots = tuple(tempered(c.root) if c.root else None for c in harmony.chords)
     just = tempered is None
     assembler = Assembler(score, harmony, layout, targets, x, roots, limit, just)
     return TunedScore(
