@@ -53,6 +53,11 @@ class Choice:
     roots: Floats
 
 
+def _away(roots: Floats) -> Floats:
+    """Distance of every place of the grid from each root, shape (chords, grid)."""
+    return (_PLACES[None, :] - roots[:, None] + _HALF) % _CIRCLE - _HALF
+
+
 class Chooser:
     """One piece's alternatives and what they cost, ready for the search.
 
@@ -64,6 +69,8 @@ class Chooser:
         Each root's place in the home scale.
     home : ndarray of bool, shape (chords,)
         Chords on the home tonic.
+    fixed : ndarray, shape (chords,)
+        Each root's cents in the tuning of the parts that cannot move.
     cap : float
         The most a held note may move, in cents.
     lead : int or None
@@ -76,13 +83,14 @@ class Chooser:
         options: Options,
         places: Floats,
         home: Flags,
+        fixed: Floats,
         weights: Weights,
         limit: int,
         cap: float,
         lead: int | None,
     ) -> None:
         self.layout, self.options = layout, options
-        self.places, self.home, self.lead = places, home, lead
+        self.places, self.home, self.fixed, self.lead = places, home, fixed, lead
         self.weights, self.limit, self.cap = weights, limit, cap
         self.count = np.array([max(len(one), 1) for one in options], dtype=np.int64)
         widest = int(self.count.max(initial=1))
@@ -97,13 +105,15 @@ class Chooser:
     def _own_costs(self) -> list[Floats]:
         """For each chord: cost of each alternative at each place, shape (alternatives, grid)."""
         layout, weights = self.layout, self.weights
-        length, every = np.zeros((2, len(self.options)))
+        length, every, beside = np.zeros((3, len(self.options)))
         sung = np.where(self.tone, layout.length, 0.0)
         np.maximum.at(length, layout.chord, sung)
         np.add.at(every, layout.chord, sung)
-        away = (_PLACES[None, :] - self.places[:, None] + _HALF) % _CIRCLE - _HALF
+        accompanied = (layout.quarters * layout.accompanied)[layout.cell_slice]
+        np.add.at(beside, layout.chord, np.where(self.tone, layout.per_piece(accompanied), 0.0))
         anchor = weights.anchor * np.where(self.home, weights.tonic, 1.0)
-        pull = (anchor * np.maximum(length, every / CHOIR))[:, None] * away**2
+        pull = (anchor * np.maximum(length, every / CHOIR))[:, None] * _away(self.places) ** 2
+        pull += (weights.fixed * beside)[:, None] * _away(self.fixed) ** 2
         wolf = weights.chord * weights.wolf * length
         sounding: list[set[int]] = [set() for _ in self.options]
         for chord, degree in zip(

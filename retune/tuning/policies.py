@@ -72,7 +72,7 @@ class Weights:
     tonic: float = 15.0
     start: float = 0.0
     bridge: float = 0.1
-    fixed: float = 3.0
+    fixed: float = 4.0
 
 
 _GENTLE = Weights()

@@ -53,10 +53,12 @@ def tune(score: Score, harmony: Harmony, policy: Policy) -> TunedScore:
     if tempered is None:
         home = np.array([chord.root == tonic for chord in harmony.chords], dtype=bool)
         weights, cap = WEIGHTS[policy.drift], policy.held_shift
-        choice = Chooser(layout, options, targets.roots, home, weights, limit, cap, lead).search()
+        root = np.array([unmoving(c.root) if c.root else 0.0 for c in harmony.chords])
+        choice = Chooser(
+            layout, options, targets.roots, home, root, weights, limit, cap, lead
+        ).search()
         targets = aim(layout, harmony, choice.templates, tonic, limit)
         start = targets.place + (choice.roots - targets.roots)[layout.chord]
-        root = np.array([unmoving(c.root) if c.root else 0.0 for c in harmony.chords])
         x = place(Problem(layout, targets, policy, start, fixed, root[layout.chord], lead))
         found = findings(score, harmony, layout, options, choice.templates, x, cap)
         scale = _home_scale(tonic, limit)

@@ -22,13 +22,13 @@ from music21 import corpus
 
 sys.path.insert(0, str(Path(__file__).parent))
 
-from tuning_measures import Measured, Pitching, measure
+from tuning_measures import Measured, Pitching, Tally, measure
 from tuning_rivals import best_scale, chained, equal
 
 import retune
 from retune.harmony.model import Harmony
-from retune.score.model import Score
-from retune.tuning.policy import Drift, Policy, Temperament
+from retune.score.model import PartKind, Score
+from retune.tuning.policy import Drift, Policy, Pull, Temperament
 
 RESULTS = Path(__file__).parent / "results" / "tuning.json"
 CHORALES = [f"bach/bwv{number}" for number in range(253, 283)]
@@ -50,6 +50,12 @@ POLICIES: dict[str, Policy] = {
     "prime limit 3": Policy(prime_limit=3),
     "pythagorean": Policy(temperament=Temperament.PYTHAGOREAN),
     "meantone": Policy(temperament=Temperament.MEANTONE),
+}
+ACCOMPANIED: dict[str, Policy] = {
+    "equal, roots drawn": Policy(),
+    "equal, all drawn": Policy(accompaniment_pull=Pull.ALL),
+    "meantone, roots drawn": Policy(accompaniment_tuning=None),
+    "meantone, all drawn": Policy(accompaniment_tuning=None, accompaniment_pull=Pull.ALL),
 }
 RIVALS: dict[str, Callable[[Score, Harmony], Pitching]] = {
     "equal temperament": equal,
@@ -128,6 +134,53 @@ def figures(names: list[str], only: str) -> dict[str, dict[str, float]]:
     return found
 
 
+def doubled(score: Score) -> Score:
+    """The piece with every voice doubled by an accompaniment that cannot move."""
+    count = len(score.parts)
+    parts = [
+        replace(part, index=part.index + count, kind=PartKind.ACCOMPANIMENT) for part in score.parts
+    ]
+    notes = [replace(note, part=note.part + count) for note in score.notes]
+    every = sorted((*score.notes, *notes), key=lambda n: (n.onset, n.part, n.pitch.key))
+    return replace(score, parts=(*score.parts, *parts), notes=tuple(every))
+
+
+def accompanied(names: list[str]) -> dict[str, dict[str, float]]:
+    """Voices doubled by an accompaniment: how far their roots and notes lie from its tuning."""
+    pieces = [doubled(load(name)[0]) for name in names]
+    harmonies = [retune.analyse(score) for score in pieces]
+    print(
+        f"\n{'':26}{'roots rms':>10}{'notes rms':>10}{'VX mean':>9}{'rms':>7}"
+        f"{'melody':>8}{'rep>5 %':>9}"
+    )
+    found = {}
+    for name, policy in ACCOMPANIED.items():
+        rows, squares, roots = [], Tally(), Tally()
+        for score, harmony in zip(pieces, harmonies, strict=True):
+            tuned = retune.tune(score, harmony, policy)
+            own = {
+                n.note.pitch.pitch_class: n.segments[0].cents
+                for n in tuned.notes
+                if not score.parts[n.note.part].tuned
+            }
+            for one in tuned.notes:
+                for segment in one.segments if score.parts[one.note.part].tuned else ():
+                    away = abs(segment.cents - own[one.note.pitch.pitch_class])
+                    squares.add(away, float(segment.duration))
+                    if segment.ratio == 1:
+                        roots.add(away, float(segment.duration))
+            pitching = [[(s.onset, s.end, s.cents) for s in n.segments] for n in tuned.notes]
+            rows.append(measure(score, harmony, pitching))
+        row = pooled(rows)
+        found[name] = {"roots_rms": roots.rms, "notes_rms": squares.rms} | row
+        print(
+            f"{name:26}{roots.rms:10.2f}{squares.rms:10.2f}{row['vx_mean']:9.3f}{row['vx_rms']:7.3f}"
+            f"{row['melody_mean']:8.3f}{row['repeated_over_5']:9.2f}",
+            flush=True,
+        )
+    return found
+
+
 def repeated_score(score: Score, times: int) -> Score:
     """A piece sung several times over, as one score."""
     length = score.end
@@ -186,11 +239,13 @@ def main() -> None:
     if options.speed:
         speed((10_000, 100_000, 1_000_000))
         return
-    table = figures(QUICK if options.quick else [*CHORALES, *MADRIGALS, *PALESTRINA], options.only)
+    names = QUICK if options.quick else [*CHORALES, *MADRIGALS, *PALESTRINA]
+    table = figures(names, options.only)
+    beside = {} if options.only else accompanied(names)
     if options.compare:
         compare(json.loads(RESULTS.read_text(encoding="utf-8"))["figures"], table)
     elif not options.quick and not options.only:
-        kept = {"figures": table, "speed": speed()}
+        kept = {"figures": table, "accompanied": beside, "speed": speed()}
         RESULTS.parent.mkdir(exist_ok=True)
         RESULTS.write_text(json.dumps(kept, indent=1) + "\n", encoding="utf-8")
 
