@@ -17,7 +17,7 @@ from itertools import zip_longest
 from typing import TypeVar
 
 from retune.errors import Weight
-from retune.score.jumps import JUMP_KINDS, jumps_in_words
+from retune.score.jumps import jumps_in
 from retune.score.ledger import Ledger
 from retune.written import Mark, MarkKind, WrittenBar, WrittenPart, WrittenScore
 
@@ -111,8 +111,10 @@ def _frame(
 
 
 def _length(bars: Sequence[WrittenBar]) -> Fraction:
-    shortest = min((bar.length for bar in bars if bar.length > 0), default=Fraction(0))
-    return max([shortest, *map(last_note_end, bars)])
+    lengths = {bar.length for bar in bars if bar.length > 0}
+    if len(lengths) == 1:
+        return lengths.pop()
+    return max([min(lengths, default=Fraction(0)), *map(last_note_end, bars)])
 
 
 def last_note_end(bar: WrittenBar) -> Fraction:
@@ -124,9 +126,9 @@ def _jumps(bars: Sequence[WrittenBar]) -> tuple[Mark, ...]:
     """Jump signs of all parts, each kind once; the one that says how it ends wins."""
     signs: dict[MarkKind, Mark] = {}
     for mark in (mark for bar in bars for mark in bar.marks):
-        for sign in jumps_in_words(mark) if mark.kind is MarkKind.WORDS else (mark,):
+        for sign in jumps_in(mark):
             known = signs.get(sign.kind)
-            if sign.kind in JUMP_KINDS and (known is None or (sign.value and not known.value)):
+            if known is None or (sign.value and not known.value):
                 signs[sign.kind] = sign
     return tuple(signs.values())
 
@@ -175,7 +177,7 @@ def _report_filling(frames: Sequence[Frame], ledger: Ledger) -> None:
 
 def _explained(frame: Frame, after: Frame | None) -> bool:
     """Whether a short bar is a pick-up, one half of a split bar, or the end of a section."""
-    if frame.begins or frame.implicit or after is None:
+    if frame.begins or frame.implicit or after is None or after.implicit:
         return True
     if frame.repeat_end or after.repeat_start or frame.ending_stop:
         return True
@@ -188,7 +190,7 @@ def _report_part(part: WrittenPart, frames: Sequence[Frame], ledger: Ledger) -> 
         what = f"has {len(part.bars)} bars where the score has {len(frames)}; silent from here"
         ledger.add(Weight.DOUBT, what, name, len(part.bars))
     for bar, frame in zip(part.bars, frames, strict=False):
-        if bar.length > frame.length:
+        if bar.length > frame.length >= frame.full:
             ledger.add(Weight.NOTE, "rests longer than the bar were cut", name, frame.index)
         elif 0 < bar.length < frame.length:
             ledger.add(

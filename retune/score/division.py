@@ -77,6 +77,8 @@ def deal(bars: Sequence[StaffBar], groups: int, owners: Sequence[Sequence[Owner]
     places = tuple(
         tuple(range(first, first + size)) for first, size in zip(firsts, sizes, strict=True)
     )
+    if sizes == (1,):
+        return Deal(sizes, (tuple(map(_alone, bars)),), (), ((),))
     lines: list[list[tuple[WrittenNote, ...]]] = [[] for _ in range(sum(sizes))]
     shared = []
     for index, (bar, owner) in enumerate(zip(bars, owners, strict=True)):
@@ -92,6 +94,13 @@ def deal(bars: Sequence[StaffBar], groups: int, owners: Sequence[Sequence[Owner]
         for group in range(groups)
     )
     return Deal(sizes, tuple(map(tuple, lines)), tuple(shared), divided)
+
+
+def _alone(bar: StaffBar) -> tuple[WrittenNote, ...]:
+    """The notes of a bar in which there is but one line."""
+    notes = [note for voice in bar.voices for note in voice.graces]
+    notes.extend(chord[0] for voice in bar.voices for chord in voice.chords)
+    return tuple(notes)
 
 
 def _is_shared(bar: StaffBar, groups: int, owner: Sequence[Owner]) -> bool:

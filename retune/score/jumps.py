@@ -1,8 +1,9 @@
-"""Jump signs: which marks jump, and what words such as "D.C. al Fine" mean."""
+"""Jump signs: which marks send the player elsewhere, and what words such as "D.C." mean."""
 
 from __future__ import annotations
 
 import re
+from collections.abc import Iterator
 from dataclasses import replace
 
 from retune.written import Mark, MarkKind
@@ -18,40 +19,48 @@ JUMP_KINDS = frozenset(
     }
 )
 
-# What singers find in print (common practice, no source); the first match decides.
-_WORDS: tuple[tuple[re.Pattern[str], MarkKind], ...] = tuple(
-    (re.compile(pattern, re.IGNORECASE), kind)
-    for pattern, kind in (
-        (r"\bd\.?\s*c\.?(?!\w)|\bda\s+capo\b", MarkKind.DA_CAPO),
-        (r"\bd\.?\s*s\.?(?!\w)|\bd(al|el)\s+segno\b", MarkKind.DAL_SEGNO),
-        (r"\b(to|alla|zur|à la)\s+coda\b", MarkKind.TO_CODA),
-        (r"^\W*coda\W*$", MarkKind.CODA),
-        (r"^\W*segno\W*$", MarkKind.SEGNO),
-        (r"^\W*(il\s+)?fine\W*$", MarkKind.FINE),
-    )
+_ENDING = r"(?P<how>(?: (?:al|alla|ad|e|et|con|senza|sino|fin|to|then|and|without|no)\b.*)?)"
+# Words, with all but letters taken away (common practice, no source).
+_WORDS = (
+    (re.compile(rf"(?:d ?c|da capo){_ENDING}"), MarkKind.DA_CAPO),
+    (re.compile(rf"(?:d ?s|dal segno|del segno){_ENDING}"), MarkKind.DAL_SEGNO),
+    (re.compile(r"(?:to|al|alla) (?:the )?coda|alla ?coda"), MarkKind.TO_CODA),
+    (re.compile(r"(?:il )?fine"), MarkKind.FINE),
+    (re.compile(r"coda"), MarkKind.CODA),
+    (re.compile(r"segno"), MarkKind.SEGNO),
 )
-_ENDS_AT_CODA = re.compile(r"\bcoda\b", re.IGNORECASE)
-_ENDS_AT_FINE = re.compile(r"\b(al|until|bis|until the)\s+(fine|end)\b|\bfine\b", re.IGNORECASE)
+_LONGEST = 60
 
 
-def jumps_in_words(mark: Mark) -> tuple[Mark, ...]:
-    """The jump sign that a text stands for, if it stands for one.
+def jump_in_words(text: str) -> tuple[MarkKind, str | None] | None:
+    """The jump that a text asks for, and how it ends ("", "fine" or "coda"), if it asks for one.
 
-    >>> from fractions import Fraction
-    >>> [str(sign.value) for sign in jumps_in_words(
-    ...     Mark(MarkKind.WORDS, Fraction(0), "D.C. al Fine"))]
-    ['fine']
+    >>> jump_in_words("D.C. al Fine")
+    (<MarkKind.DA_CAPO: 'da capo'>, 'fine')
+    >>> jump_in_words("To Coda")
+    (<MarkKind.TO_CODA: 'to coda'>, None)
+    >>> jump_in_words("fine voices only") is None
+    True
     """
-    text = str(mark.value or "")
+    if len(text) > _LONGEST:
+        return None
+    plain = " ".join(re.sub(r"[\W_]", " ", text).lower().split())
     for pattern, kind in _WORDS:
-        if pattern.search(text):
-            return (replace(mark, kind=kind, value=_ending(kind, text)),)
-    return ()
+        match = pattern.fullmatch(plain)
+        if match is not None:
+            return kind, _how_it_ends(match["how"]) if "how" in match.groupdict() else None
+    return None
 
 
-def _ending(kind: MarkKind, text: str) -> str:
-    if kind not in (MarkKind.DA_CAPO, MarkKind.DAL_SEGNO):
-        return ""
-    if _ENDS_AT_CODA.search(text):
-        return "coda"
-    return "fine" if _ENDS_AT_FINE.search(text) else ""
+def _how_it_ends(text: str) -> str:
+    return next((end for end in ("coda", "fine") if end in text), "")
+
+
+def jumps_in(mark: Mark) -> Iterator[Mark]:
+    """The jump that a mark stands for, as a sign or in words; nothing for other marks."""
+    if mark.kind in JUMP_KINDS:
+        yield mark
+    elif mark.kind is MarkKind.WORDS:
+        jump = jump_in_words(str(mark.value or ""))
+        if jump is not None:
+            yield replace(mark, kind=jump[0], value=jump[1])

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections import Counter
 from collections.abc import Sequence
 from dataclasses import dataclass
 from statistics import fmean
@@ -11,7 +12,7 @@ from retune.score.bars import Frame
 from retune.score.division import Deal, deal, share, usual_voices
 from retune.score.ledger import Ledger
 from retune.score.model import PartKind
-from retune.score.names import Label, tidy
+from retune.score.names import Label, read_name, tidy
 from retune.score.owners import owners_of
 from retune.score.staves import read_staff
 from retune.written import WrittenNote, WrittenPart
@@ -34,6 +35,8 @@ class Line:
     voice: str
     bars: LineBars
     singers: bool = True
+    whole_staff: bool = True
+    """False for a part that stays one line with all its staves."""
 
     @property
     def mean_key(self) -> float:
@@ -45,12 +48,23 @@ def whole_part(index: int, part: WrittenPart, kind: PartKind, frames: Sequence[F
     """A part that stays one line, with all its staves and voices."""
     bars = tuple(bar.notes for bar in part.bars)
     bars += ((),) * (len(frames) - len(bars))
-    return Line(index, Label(display_name(part)), kind, 1, "1", bars, singers=False)
+    return Line(
+        index, Label(display_name(part)), kind, 1, "1", bars, singers=False, whole_staff=False
+    )
 
 
 def display_name(part: WrittenPart) -> str:
-    """What to call a part of the file."""
-    return tidy(part.name) or tidy(part.instrument) or tidy(part.abbreviation) or part.id
+    """What to call a part of the file; never empty."""
+    names = [tidy(name) for name in (part.name, part.instrument, part.abbreviation)]
+    telling = (name for name in names if name and not read_name(name).generic)
+    return next(telling, names[0] or part.id or "Part")
+
+
+def _own_name(part: WrittenPart, groups: int) -> str:
+    """The name of lines whose part's name names no voices; "" where it says nothing."""
+    name = tidy(part.name)
+    empty = "musicxml" in name.casefold() or (groups > 1 and name[-1:].isdigit())
+    return "" if read_name(name).generic and empty else name
 
 
 def split_part(
@@ -68,19 +82,25 @@ def split_part(
         bars = read_staff(part, staff, frames)
         groups = [labels[place] for place in places]
         if not groups:
-            groups = [Label(tidy(part.name))] * usual_voices(bars)
+            count = usual_voices(bars)
+            groups = [Label(_own_name(part, count * len(staves)))] * count
         owners = owners_of(part, staff, bars, groups)
         dealt = deal(bars, len(groups), owners)
         _report(part, groups, dealt, ledger)
-        voices = [voice.voice for bar in bars for voice in bar.voices]
         entries = [
             label for label, size in zip(groups, dealt.sizes, strict=True) for _ in range(size)
         ]
         lines.extend(
-            Line(index, label, PartKind.VOICE, staff, voices[0] if voices else "1", notes, singers)
+            Line(index, label, PartKind.VOICE, staff, _voice(notes), notes, singers)
             for label, notes in zip(entries, dealt.lines, strict=True)
+            if any(notes)
         )
-    return [line for line in lines if any(line.bars)]
+    return lines
+
+
+def _voice(bars: LineBars) -> str:
+    """The voice of the file that a line mostly is."""
+    return Counter(note.voice for bar in bars for note in bar).most_common(1)[0][0]
 
 
 def _report(part: WrittenPart, groups: Sequence[Label], dealt: Deal, ledger: Ledger) -> None:

@@ -99,6 +99,13 @@ def singers_named(text: str) -> tuple[Label, ...]:
     return _labels(text)
 
 
+def plain_label(label: Label) -> Label:
+    """A label under the standard name of its voice."""
+    if label.voice_type is None:
+        return label
+    return Label(_standard(label.voice_type, label.ordinal), label.voice_type, label.ordinal)
+
+
 def tidy(name: str) -> str:
     """A name on one line, without the dots and blanks at its ends."""
     return " ".join(name.split()).strip(" .,:;")

@@ -15,7 +15,7 @@ from retune.errors import Weight
 from retune.score.ledger import Ledger
 from retune.score.lines import Line
 from retune.score.model import PartKind, VoiceType
-from retune.score.names import Label, read_name
+from retune.score.names import Label, Role, read_name
 from retune.score.voicewords import STANDARD_NAMES
 
 RANGES: dict[VoiceType, tuple[int, int]] = {
@@ -34,16 +34,18 @@ FOUR_VOICES = (VoiceType.SOPRANO, VoiceType.ALTO, VoiceType.TENOR, VoiceType.BAS
 
 def named(lines: Sequence[Line], ledger: Ledger) -> list[Line]:
     """The lines with steady, different names, and with voice types for those that sing."""
-    typed = [_typed(line) for line in _as_four_voices(lines, ledger)]
-    for line in typed:
-        _check_octave(line, ledger)
-    return _different(typed)
+    labelled = _as_four_voices(lines, ledger)
+    final = _different([_typed(line) for line in labelled])
+    for before, line in zip(labelled, final, strict=True):
+        if before.label.voice_type is not None:
+            _check_octave(line, ledger)
+    return final
 
 
 def _as_four_voices(lines: Sequence[Line], ledger: Ledger) -> list[Line]:
     """Four nameless lines become Soprano, Alto, Tenor and Bass, where their ranges fit."""
     voices = [line for line in lines if line.kind is PartKind.VOICE and line.singers]
-    if len(voices) != 4 or not all(_nameless(line) for line in voices):
+    if len(voices) != 4 or not all(_nameless(line, voices) for line in voices):
         return list(lines)
     means = [line.mean_key for line in voices]
     fits = all(map(_in_range, voices, FOUR_VOICES))
@@ -59,10 +61,15 @@ def _as_four_voices(lines: Sequence[Line], ledger: Ledger) -> list[Line]:
     ]
 
 
-def _nameless(line: Line) -> bool:
-    return line.label.voice_type is None and (
-        not line.label.name or read_name(line.label.name).role.value in ("unknown", "keyboard")
-    )
+def _nameless(line: Line, voices: Sequence[Line]) -> bool:
+    """Whether a line's name says nothing about it alone: none, "Part 1", "Piano", "Choir"."""
+    name = line.label.name
+    if line.label.voice_type is not None:
+        return False
+    reading = read_name(name)
+    if not name or reading.generic or reading.role is Role.KEYBOARD:
+        return True
+    return sum(other.label.name == name for other in voices) > 1
 
 
 def _in_range(line: Line, voice_type: VoiceType) -> bool:
@@ -81,7 +88,7 @@ def _typed(line: Line) -> Line:
 
 def _check_octave(line: Line, ledger: Ledger) -> None:
     """Doubt a voice that would lie well an octave higher or lower."""
-    if not line.singers or line.label.voice_type is None:
+    if line.label.voice_type is None:
         return
     low, high = RANGES[line.label.voice_type]
     mean = line.mean_key

@@ -107,9 +107,8 @@ class _Player:
         self._jump: Mark | None = None
         self._segnos = self._landings(MarkKind.SEGNO)
         self._codas = self._landings(MarkKind.CODA)
-        self._to_codas = {
-            frame.index for frame in frames if self._sign(frame.index, MarkKind.TO_CODA) is not None
-        }
+        self._to_codas = self._bars_with(MarkKind.TO_CODA)
+        self._fines = self._bars_with(MarkKind.FINE)
 
     def steps(self) -> Iterator[Step]:
         index = 0
@@ -150,10 +149,12 @@ class _Player:
     def _sign(self, index: int, kind: MarkKind) -> Mark | None:
         return next((mark for mark in self._frames[index].jumps if mark.kind is kind), None)
 
+    def _bars_with(self, kind: MarkKind) -> frozenset[int]:
+        indices = range(len(self._frames))
+        return frozenset(index for index in indices if self._sign(index, kind) is not None)
+
     def _ends_at_fine(self, index: int) -> bool:
-        if self._jump is None or self._sign(index, MarkKind.FINE) is None:
-            return False
-        return self._jump.value != "coda"
+        return self._jump is not None and self._jump.value != "coda" and index in self._fines
 
     def _jump_target(self, index: int) -> int | None:
         """Where the music goes on after a bar, if a jump is taken there."""
@@ -175,8 +176,20 @@ class _Player:
                 continue
             self._jump = sign
             self._spent |= self._visited
+            self._run.update((section, section.times) for section in self._spent)
+            self._doubt(sign, index)
             return target
         return None
+
+    def _doubt(self, sign: Mark, index: int) -> None:
+        """Note a jump whose end is named but nowhere printed."""
+        beyond = any(self._coda_after(bar) is not None for bar in range(len(self._frames)))
+        if sign.value == "coda" and not beyond:
+            what = "al Coda, without a coda sign to leave at or to go to; played to the end"
+            self._ledger.add(Weight.DOUBT, what, bar=index)
+        if sign.value == "fine" and not self._fines:
+            what = "al Fine, without a Fine; played to the end"
+            self._ledger.add(Weight.DOUBT, what, bar=index)
 
     def _on_last_pass(self, index: int) -> bool:
         """A jump waits for the last pass, unless it stands in an ending of its own."""

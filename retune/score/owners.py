@@ -48,6 +48,8 @@ def _said(part: WrittenPart, index: int, staff: int, groups: Sequence[Label]) ->
 
 
 def _owner(onset: Fraction, text: str, groups: Sequence[Label]) -> Owner | None:
+    if _ALL.search(text):
+        return Owner(onset, None)
     named = {(label.voice_type, label.ordinal) for label in singers_named(text)}
     types = {voice_type for voice_type, _ in named}
     chosen = frozenset(
@@ -59,6 +61,4 @@ def _owner(onset: Fraction, text: str, groups: Sequence[Label]) -> Owner | None:
     solo = _SOLO.search(text) is not None
     if chosen:
         return Owner(onset, chosen, solo)
-    if solo:
-        return Owner(onset, None, solo)
-    return Owner(onset, None) if _ALL.search(text) else None
+    return Owner(onset, None, solo) if solo else None

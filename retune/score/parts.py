@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import difflib
-from collections.abc import Sequence
+from collections.abc import Container, Iterator, Sequence
 from dataclasses import dataclass, replace
 
 from retune.errors import Place, Weight, WishError
@@ -11,7 +11,7 @@ from retune.score.bars import Frame
 from retune.score.ledger import Ledger
 from retune.score.lines import Line, LineBars, display_name, split_part, whole_part
 from retune.score.model import PartKind
-from retune.score.names import NameReading, Role, read_name
+from retune.score.names import NameReading, Role, plain_label, read_name
 from retune.score.naming import named
 from retune.score.options import ReadOptions
 from retune.score.reductions import DOUBLING, doubled_share
@@ -58,16 +58,22 @@ def cast_parts(
             singers = reading.role is not Role.INSTRUMENT
             lines.extend(split_part(index, part, reading.labels, singers, frames, ledger))
             if reading.role in FIXED_ROLES:
-                what = "no voices in this score: its lines are tuned as if they were sung"
+                what = "the score has no part for voices; the lines of this one are tuned instead"
                 ledger.add(Weight.DOUBT, what, display_name(part))
     lines = _fixed_on_wish(named(lines, ledger), written, wishes, options, ledger.file)
-    silent = [
-        display_name(part)
-        for part in written.parts
-        if part.unpitched and part not in [sounding_part for _, sounding_part in sounding]
-    ]
     kept, reductions = _without_reductions(lines, written, readings, wishes, ledger)
-    return Casting(tuple(kept), (*reductions, *silent))
+    return Casting(tuple(kept), (*reductions, *_unpitched(written, readings, ledger)))
+
+
+def _unpitched(written: WrittenScore, sounding: Container[int], ledger: Ledger) -> Iterator[str]:
+    """Names of parts that have nothing but unpitched notes; all unpitched notes are noted."""
+    for index, part in enumerate(written.parts):
+        if part.unpitched:
+            plural = "" if part.unpitched == 1 else "s"
+            what = f"{part.unpitched} unpitched note{plural} left out"
+            ledger.add(Weight.LOSS, what, display_name(part))
+            if index not in sounding:
+                yield display_name(part)
 
 
 def understand(part: WrittenPart) -> NameReading:
@@ -85,7 +91,7 @@ def _by_other_evidence(part: WrittenPart, reading: NameReading) -> NameReading:
     for text in (part.instrument.replace(".", " "), part.abbreviation) if reading.generic else ():
         other = read_name(text)
         if other.role is Role.SINGERS:
-            return other
+            return replace(other, labels=tuple(map(plain_label, other.labels)))
         if other.role in FIXED_ROLES and not sung and (part.staves > 1 or "iano" not in text):
             return other
         if other.role is Role.INSTRUMENT and not sung:

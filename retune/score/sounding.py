@@ -3,20 +3,21 @@
 from __future__ import annotations
 
 from collections import defaultdict
-from collections.abc import Iterable, Sequence
+from collections.abc import Iterable, Iterator, Sequence
 from dataclasses import replace
 from fractions import Fraction
 
 from retune.errors import Weight
 from retune.score.bars import Frame
-from retune.score.dynamics import Loudness, loudness, start_times
+from retune.score.dynamics import Loudness, loudness_of_lines, start_times
 from retune.score.grace import with_graces
+from retune.score.grid import Grid
 from retune.score.ledger import Ledger
 from retune.score.lines import Line, display_name
-from retune.score.model import Note, PartKind
+from retune.score.model import Note
 from retune.score.order import Step
-from retune.score.ties import Notehead, join_ties
-from retune.score.verses import Verses
+from retune.score.ties import Chain, Notehead, join_ties, without_overlaps
+from retune.score.verses import Verses, report_unsung
 from retune.written import WrittenScore
 
 
@@ -28,109 +29,92 @@ def sounding_notes(
     ledger: Ledger,
 ) -> tuple[Note, ...]:
     """All notes of the lines as played, sorted by onset, then part, then key."""
-    by_part: defaultdict[int, list[int]] = defaultdict(list)
-    for index, line in enumerate(lines):
-        by_part[line.written].append(index)
-    heads = _noteheads(written, frames, steps, lines, ledger)
+    grid = Grid.of(_times(frames, lines))
+    verses = [Verses(line.bars) for line in lines]
+    levels = loudness_of_lines(written, frames, lines)
+    heads = [
+        list(_noteheads(place, line, level, words, frames, steps, grid))
+        for place, (line, level, words) in enumerate(zip(lines, levels, verses, strict=True))
+    ]
+    report_unsung(verses, ledger)
+    chains: list[list[Chain]] = [[] for _ in lines]
+    for part, places in _by_part(lines).items():
+        mains = [head for place in places for head in heads[place] if not head.written.grace]
+        mains.sort(key=lambda head: head.onset)
+        name = display_name(written.parts[part])
+        for chain in _joined(mains, steps, frames, name, ledger):
+            chains[chain.line].append(chain)
     notes: list[Note] = []
-    for written_index, indices in by_part.items():
-        name = display_name(written.parts[written_index])
-        joined = _joined([heads[index] for index in indices], steps, frames, name, ledger)
-        for index in indices:
-            graces = [head for head in heads[index] if head.written.grace]
-            notes.extend(_without_overlaps(with_graces(joined.get(index, []), graces)))
+    for line_heads, line_chains in zip(heads, chains, strict=True):
+        notes.extend(_notes_of_line(line_heads, line_chains, grid))
     notes.sort(key=lambda note: (float(note.onset), note.part, note.pitch.key))
     return tuple(notes)
 
 
+def _times(frames: Sequence[Frame], lines: Sequence[Line]) -> Iterator[Fraction]:
+    for frame in frames:
+        yield frame.length
+    for line in lines:
+        for bar in line.bars:
+            for note in bar:
+                yield note.onset
+                yield note.duration
+
+
+def _by_part(lines: Sequence[Line]) -> dict[int, list[int]]:
+    """The lines of each written part, as places in the list."""
+    places: defaultdict[int, list[int]] = defaultdict(list)
+    for place, line in enumerate(lines):
+        places[line.written].append(place)
+    return places
+
+
 def _noteheads(
-    written: WrittenScore,
+    place: int,
+    line: Line,
+    level: Loudness,
+    words: Verses,
     frames: Sequence[Frame],
     steps: Sequence[Step],
-    lines: Sequence[Line],
-    ledger: Ledger,
-) -> list[list[Notehead]]:
-    """For each line its noteheads in playing order, sorted by onset."""
-    levels = _levels(written, frames, lines)
-    verses = [Verses(line.bars) for line in lines]
+    grid: Grid,
+) -> Iterator[Notehead]:
+    """The noteheads of a line in playing order."""
     starts = start_times(frames)
-    heads: list[list[Notehead]] = [[] for _ in lines]
-    onset = Fraction(0)
+    bars = [
+        [
+            (
+                grid.ticks(note.onset),
+                grid.ticks(note.duration),
+                level.velocity(note, starts[index] + float(note.onset)),
+                note,
+            )
+            for note in bar
+        ]
+        for index, bar in enumerate(line.bars)
+    ]
+    start = 0
     for index, step in enumerate(steps):
         bar = step.written
-        for place, line in enumerate(lines):
-            level, words = levels[place], verses[place]
-            for note in line.bars[bar]:
-                heads[place].append(
-                    Notehead(
-                        line=place,
-                        onset=onset + note.onset,
-                        written=note,
-                        step=index,
-                        bar=bar,
-                        velocity=level.velocity(note, starts[bar] + float(note.onset)),
-                        lyric=words.words(note, bar, step.turn) if note.lyrics else "",
-                    )
-                )
-        onset += frames[bar].length
-    for line_heads in heads:
-        line_heads.sort(key=lambda head: float(head.onset))
-    _report_verses(lines, verses, ledger)
-    return heads
-
-
-def _report_verses(lines: Sequence[Line], verses: Sequence[Verses], ledger: Ledger) -> None:
-    unsung = set().union(*(line.printed for line in verses)) - set().union(
-        *(line.sung for line in verses)
-    )
-    if unsung:
-        numbers = ", ".join(str(number) for number in sorted(unsung) if number)
-        what = (
-            f"verse {numbers} has no repeat to be sung in"
-            if numbers
-            else "a named verse is not sung"
-        )
-        ledger.add(Weight.NOTE, what)
-
-
-def _levels(
-    written: WrittenScore, frames: Sequence[Frame], lines: Sequence[Line]
-) -> list[Loudness]:
-    """The dynamics of each line: its own, else those of its part, else of its neighbours."""
-    own = [
-        loudness(written.parts[line.written], line.staff if line.singers else None, frames)
-        for line in lines
-    ]
-    of_part = {line.written: loudness(written.parts[line.written], None, frames) for line in lines}
-    voices = [place for place, line in enumerate(lines) if line.kind is PartKind.VOICE]
-    found = []
-    for place, line in enumerate(lines):
-        level = own[place] or of_part[line.written]
-        if level is None:
-            nearest = sorted(voices, key=lambda other: (abs(other - place), other))
-            level = next((own[other] for other in nearest if own[other] is not None), None)
-        found.append(level or Loudness())
-    return found
+        for onset, length, velocity, note in bars[bar]:
+            lyric = words.words(note, bar, step.turn) if note.lyrics else ""
+            begin = start + onset
+            yield Notehead(place, begin, begin + length, note, index, bar, velocity, lyric)
+        start += grid.ticks(frames[bar].length)
 
 
 def _joined(
-    heads: Iterable[Sequence[Notehead]],
+    heads: Sequence[Notehead],
     steps: Sequence[Step],
     frames: Sequence[Frame],
     name: str,
     ledger: Ledger,
-) -> dict[int, list[Note]]:
-    """The notes of one written part, by line."""
-    mains = [head for line in heads for head in line if not head.written.grace]
-    mains.sort(key=lambda head: float(head.onset))
+) -> Iterable[Chain]:
+    """The noteheads of one written part with their ties joined."""
 
     def in_a_row(before: int, after: int) -> bool:
         return steps[after].written - steps[before].written == after - before
 
-    joined = join_ties(mains, in_a_row)
-    by_line: dict[int, list[Note]] = {}
-    for note in joined.notes:
-        by_line.setdefault(note.part, []).append(note)
+    joined = join_ties(heads, in_a_row)
     for loose, what in (
         (joined.loose_starts, "tie that leads to no note of the same pitch"),
         (joined.loose_stops, "tied note without its first note; sung anew"),
@@ -138,29 +122,16 @@ def _joined(
         for head in loose:
             beat = frames[head.bar].beat(head.written.onset)
             ledger.add(Weight.DOUBT, what, name, head.bar, beat)
-    return by_line
+    return joined.chains
 
 
-def _without_overlaps(notes: Sequence[Note]) -> list[Note]:
-    """A line's notes without two of one key that sound at once.
-
-    Where a key is struck again while it sounds, the first note ends there; equal onsets make
-    one note.
-    """
-    result: list[Note] = []
-    latest: dict[int, int] = {}
-    for note in sorted(notes, key=lambda note: float(note.onset)):
-        place = latest.get(note.pitch.key)
-        if place is not None and result[place].end > note.onset:
-            before = result[place]
-            end = max(before.end, note.end)
-            if before.onset == note.onset:
-                result[place] = replace(
-                    before, duration=end - note.onset, sources=before.sources + note.sources
-                )
-                continue
-            result[place] = replace(before, duration=note.onset - before.onset, stolen=Fraction(0))
-            note = replace(note, duration=end - note.onset)
-        latest[note.pitch.key] = len(result)
-        result.append(note)
-    return result
+def _notes_of_line(
+    heads: Sequence[Notehead], chains: Sequence[Chain], grid: Grid
+) -> Sequence[Note]:
+    notes = [chain.note(grid) for chain in without_overlaps(chains)]
+    graces = [
+        replace(Chain([head], head.end).note(grid), grace=True)
+        for head in sorted(heads, key=lambda head: head.onset)
+        if head.written.grace
+    ]
+    return with_graces(notes, graces) if graces else notes

@@ -95,13 +95,15 @@ def _voices(notes: Iterable[WrittenNote], rests: Iterable[WrittenRest]) -> Itera
 
 def chords_of(notes: Sequence[WrittenNote]) -> tuple[Chord, ...]:
     """Notes drawn together by onset, in order; syllables of a chord go to all its notes."""
-    ordered = sorted(notes, key=lambda note: (note.onset, -note.pitch.key))
+    ordered = sorted((float(note.onset), -note.pitch.key, at) for at, note in enumerate(notes))
     chords: list[list[WrittenNote]] = []
-    for note in ordered:
-        if chords and chords[-1][0].onset == note.onset:
-            chords[-1].append(note)
+    reached = -1.0
+    for onset, _, at in ordered:
+        if onset == reached:
+            chords[-1].append(notes[at])
         else:
-            chords.append([note])
+            chords.append([notes[at]])
+            reached = onset
     return tuple(tuple(chord) if len(chord) == 1 else _sharing_lyrics(chord) for chord in chords)
 
 

@@ -2,6 +2,7 @@
 
 Conventions
 -----------
+* Times are whole ticks of one `Grid`.
 * A tie joins two noteheads of one part that abut as played and have one key number, however
   they are spelled and whichever voice they stand in; the own voice comes first.
 * One flag is enough, at the first notehead or at the second, where the two stand next to each
@@ -12,54 +13,54 @@ from __future__ import annotations
 
 from collections.abc import Callable, Iterable, Sequence
 from dataclasses import dataclass, field
-from fractions import Fraction
 from itertools import groupby
 
+from retune.score.grid import Grid
 from retune.score.model import Note
 from retune.written import WrittenNote
 
 
 @dataclass(frozen=True, slots=True)
 class Notehead:
-    """A written note at its place in the piece as played.
+    """A written note at its place in the piece as played, from tick `onset` to tick `end`.
 
     `step` is the bar as played, `bar` the bar as written.
     """
 
     line: int
-    onset: Fraction
+    onset: int
+    end: int
     written: WrittenNote
-    step: int
-    bar: int
+    step: int = 0
+    bar: int = 0
     velocity: int = 80
     lyric: str = ""
 
-    @property
-    def end(self) -> Fraction:
-        """Where the notehead stops."""
-        return self.onset + self.written.duration
-
 
 @dataclass(slots=True)
-class _Chain:
-    """Noteheads joined so far."""
+class Chain:
+    """Noteheads joined into one note; grows while ties are followed."""
 
     heads: list[Notehead]
-    end: Fraction
+    end: int
     line: int = field(init=False)
+    onset: int = field(init=False)
+    key: int = field(init=False)
 
     def __post_init__(self) -> None:
-        self.line = self.heads[0].line
+        first = self.heads[0]
+        self.line, self.onset, self.key = first.line, first.onset, first.written.pitch.key
 
-    def note(self) -> Note:
+    def note(self, grid: Grid) -> Note:
+        """The chain as one note."""
         first = self.heads[0]
         marks = first.written.marks
         if len(self.heads) > 1:
             marks = marks.union(*(head.written.marks for head in self.heads[1:]))
         return Note(
-            part=first.line,
-            onset=first.onset,
-            duration=self.end - first.onset,
+            part=self.line,
+            onset=grid.quarters(self.onset),
+            duration=grid.quarters(self.end - self.onset),
             pitch=first.written.pitch,
             velocity=first.velocity,
             lyric=first.lyric,
@@ -70,9 +71,9 @@ class _Chain:
 
 @dataclass(frozen=True, slots=True)
 class Joined:
-    """Notes of a part, and the noteheads whose tie leads nowhere or comes from nowhere."""
+    """Notes of a part by onset, and noteheads whose tie leads or comes from nowhere."""
 
-    notes: tuple[Note, ...]
+    chains: tuple[Chain, ...]
     loose_starts: tuple[Notehead, ...] = ()
     loose_stops: tuple[Notehead, ...] = ()
 
@@ -89,17 +90,17 @@ def join_ties(heads: Sequence[Notehead], in_a_row: Callable[[int, int], bool]) -
     """
     joiner = _Joiner(in_a_row)
     for _, together in groupby(heads, key=lambda head: head.onset):
-        joiner.add(list(together))
+        joiner.add(together)
     return joiner.result()
 
 
 class _Joiner:
     def __init__(self, in_a_row: Callable[[int, int], bool]) -> None:
         self._in_a_row = in_a_row
-        self._chains: list[_Chain] = []
-        self._latest: dict[tuple[int, int], _Chain] = {}
-        self._open: dict[int, list[_Chain]] = {}
-        self._joins: set[tuple[int, Fraction]] = set()
+        self._chains: list[Chain] = []
+        self._latest: dict[tuple[int, int], Chain] = {}
+        self._open: dict[int, list[Chain]] = {}
+        self._joins: set[tuple[int, int]] = set()
 
     def add(self, together: Iterable[Notehead]) -> None:
         """Add the noteheads of one onset: first ties in their own line, then across lines."""
@@ -117,14 +118,14 @@ class _Joiner:
             else:
                 self._begin(head)
 
-    def _tied(self, chain: _Chain, head: Notehead) -> bool:
+    def _tied(self, chain: Chain, head: Notehead) -> bool:
         before = chain.heads[-1]
         start, stop = before.written.tie_start, head.written.tie_stop
         if start and stop:
             return True
         return (start or stop) and self._in_a_row(before.step, head.step)
 
-    def _crossing(self, head: Notehead) -> _Chain | None:
+    def _crossing(self, head: Notehead) -> Chain | None:
         """An open tie of another line that ends here."""
         return next(
             (
@@ -136,27 +137,48 @@ class _Joiner:
         )
 
     def _begin(self, head: Notehead) -> None:
-        chain = _Chain([head], head.end)
+        chain = Chain([head], head.end)
         self._chains.append(chain)
-        self._latest[(head.line, head.written.pitch.key)] = chain
+        self._latest[(chain.line, chain.key)] = chain
         if head.written.tie_start:
-            self._open.setdefault(head.written.pitch.key, []).append(chain)
+            self._open.setdefault(chain.key, []).append(chain)
 
-    def _extend(self, chain: _Chain, head: Notehead) -> None:
-        key = head.written.pitch.key
-        self._joins.add((key, head.onset))
+    def _extend(self, chain: Chain, head: Notehead) -> None:
+        self._joins.add((chain.key, head.onset))
         chain.heads.append(head)
         chain.end = head.end
-        still_open = [other for other in self._open.get(key, ()) if other is not chain]
-        self._open[key] = [*still_open, chain] if head.written.tie_start else still_open
+        still_open = [other for other in self._open.get(chain.key, ()) if other is not chain]
+        self._open[chain.key] = [*still_open, chain] if head.written.tie_start else still_open
 
     def result(self) -> Joined:
+        """All chains, and the ends that no tie took up."""
         loose_starts, loose_stops = [], []
         for chain in self._chains:
-            first, last = chain.heads[0].written, chain.heads[-1].written
-            if last.tie_start and (last.pitch.key, chain.end) not in self._joins:
-                loose_starts.append(chain.heads[-1])
-            if first.tie_stop and (first.pitch.key, chain.heads[0].onset) not in self._joins:
-                loose_stops.append(chain.heads[0])
-        notes = tuple(chain.note() for chain in self._chains)
-        return Joined(notes, tuple(loose_starts), tuple(loose_stops))
+            first, last = chain.heads[0], chain.heads[-1]
+            if last.written.tie_start and (chain.key, chain.end) not in self._joins:
+                loose_starts.append(last)
+            if first.written.tie_stop and (chain.key, chain.onset) not in self._joins:
+                loose_stops.append(first)
+        return Joined(tuple(self._chains), tuple(loose_starts), tuple(loose_stops))
+
+
+def without_overlaps(chains: Iterable[Chain]) -> list[Chain]:
+    """A line's chains, by onset, without two of one key that sound at once.
+
+    Where a key is struck again while it sounds, the first note ends there and the second one
+    lasts as long as either; two that begin together become one.
+    """
+    result: list[Chain] = []
+    latest: dict[int, Chain] = {}
+    for chain in chains:
+        before = latest.get(chain.key)
+        if before is not None and before.end > chain.onset:
+            end = max(before.end, chain.end)
+            if before.onset == chain.onset:
+                before.end = end
+                before.heads += chain.heads
+                continue
+            before.end, chain.end = chain.onset, end
+        latest[chain.key] = chain
+        result.append(chain)
+    return result

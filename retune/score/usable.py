@@ -31,9 +31,9 @@ def _without_faulty(bar: WrittenBar) -> WrittenBar:
 
 
 def _fault(note: WrittenNote) -> str:
-    if note.duration <= 0 and not note.grace:
+    if note.duration.numerator <= 0 and not note.grace:
         return "note without length"
-    if note.onset < 0:
+    if note.onset.numerator < 0:
         return "note before the start of its bar"
     if not 0 <= note.pitch.key <= 127:
         return "note outside the range of MIDI keys (0 to 127)"

@@ -13,6 +13,7 @@ import re
 from collections.abc import Sequence
 from dataclasses import replace
 from fractions import Fraction
+from functools import lru_cache
 
 from retune.errors import Weight
 from retune.score.ledger import Ledger
@@ -26,6 +27,7 @@ NAMED = 0
 _LAST_NUMBER = re.compile(r"(\d+)\D*$")
 
 
+@lru_cache(maxsize=1024)
 def verse_number(name: str) -> int:
     """The number in a verse's name, 0 where it holds none.
 
@@ -39,6 +41,17 @@ def verse_number(name: str) -> int:
 def syllable(lyric: WrittenLyric) -> str:
     """A syllable as it is shown, with a hyphen where the word goes on."""
     return lyric.text + "-" if lyric.syllabic in ("begin", "middle") else lyric.text
+
+
+def report_unsung(verses: Sequence[Verses], ledger: Ledger) -> None:
+    """Note the verses of a score that no pass reaches."""
+    printed = frozenset().union(*(line.printed for line in verses))
+    unsung = printed.difference(*(line.sung for line in verses))
+    numbers = sorted(unsung - {NAMED})
+    if numbers:
+        which = ", ".join(map(str, numbers))
+        what = f"verse {which} is printed, but no repeat leads to it; not sung"
+        ledger.add(Weight.LOSS, what)
 
 
 class Verses:
@@ -59,6 +72,7 @@ class Verses:
         ]
         self.printed = frozenset().union(*printed)
         self.sung: set[int] = set()
+        self._chosen: dict[tuple[int, int], int] = {}
 
     def words(self, note: WrittenNote, bar: int, turn: int) -> str:
         """The syllable that a note of a written bar gets in a turn; "" for none."""
@@ -75,9 +89,13 @@ class Verses:
         return ""
 
     def _verse(self, bar: int, turn: int) -> int:
-        numbers = self._verses[bar]
-        lower = [number for number in numbers if NAMED < number <= turn]
-        return max(lower) if lower else min(numbers - {NAMED}, default=NAMED)
+        known = self._chosen.get((bar, turn))
+        if known is None:
+            numbers = self._verses[bar] - {NAMED}
+            lower = [number for number in numbers if number <= turn]
+            known = max(lower) if lower else min(numbers, default=NAMED)
+            self._chosen[(bar, turn)] = known
+        return known
 
 
 def with_shared_words(lines: Sequence[Line], ledger: Ledger) -> list[Line]:
@@ -86,30 +104,27 @@ def with_shared_words(lines: Sequence[Line], ledger: Ledger) -> list[Line]:
     On one staff bar by bar; a line without any words takes those of the nearest line, the one
     above first. Only notes that begin together with a syllable get it.
     """
-    singing = [line for line in lines if line.kind is PartKind.VOICE and line.singers]
-    result = []
-    for line in lines:
-        if line in singing:
-            others = [other for other in singing if other is not line]
-            staff = [o for o in others if (o.written, o.staff) == (line.written, line.staff)]
-            line = _reading(line, staff)
-            if not _has_words(line):
-                line = _without_words(line, others, lines, ledger)
-        result.append(line)
+    singing = [
+        place for place, line in enumerate(lines) if line.kind is PartKind.VOICE and line.singers
+    ]
+    result = list(lines)
+    for place in singing:
+        line = lines[place]
+        others = [lines[other] for other in singing if other != place]
+        result[place] = _reading(
+            line, [o for o in others if (o.written, o.staff) == (line.written, line.staff)]
+        )
+    with_words = [place for place in singing if _has_words(result[place])]
+    borrowers: dict[str, list[str]] = {}
+    for place in singing if with_words else ():
+        if place not in with_words:
+            nearest = result[min(with_words, key=lambda other: (abs(other - place), other))]
+            result[place] = _reading(result[place], [nearest])
+            borrowers.setdefault(nearest.label.name, []).append(lines[place].label.name)
+    for lender, names in borrowers.items():
+        what = f"no words of their own in {', '.join(names)}: they sing those of {lender}"
+        ledger.add(Weight.NOTE, f"{what} where both begin together")
     return result
-
-
-def _without_words(
-    line: Line, others: Sequence[Line], lines: Sequence[Line], ledger: Ledger
-) -> Line:
-    place = lines.index(line)
-    with_words = [other for other in others if _has_words(other)]
-    if not with_words:
-        return line
-    nearest = min(with_words, key=lambda o: (abs(lines.index(o) - place), lines.index(o)))
-    what = f"has no words; sings those of {nearest.label.name} where both begin together"
-    ledger.add(Weight.NOTE, what, line.label.name)
-    return _reading(line, [nearest])
 
 
 def _has_words(line: Line) -> bool:
