@@ -1,91 +1,104 @@
-"""Segments made chords: silence set apart, equal neighbours joined, roots named.
+"""States of slices made chords: rests told apart, equal neighbours joined, roots named.
 
 Conventions
 -----------
-* Silence inside a chord stays in it where it is shorter than `BREATH`; all other silence is a
-  chord without root, of confidence 1.
+* A rest of all parts up to `BREATH` belongs to the chord before it; longer silence, and silence
+  at the start, is a chord without root, of confidence 1.
 * Confidence is the posterior probability of the root, averaged over the chord's sounding time.
+  The weights were learned from music in several parts, so it is lowered where a line sounds
+  alone, down to `LONE_LINE` of itself.
+* Where one pitch class is all that sounds, the chord is a plain major or minor one.
 """
 
 from __future__ import annotations
-
-from collections.abc import Iterator
 
 import numpy as np
 
 from retune.harmony.evidence import Evidence
 from retune.harmony.metre import TOLERANCE
-from retune.harmony.model import Chord
+from retune.harmony.model import Chord, Quality
 from retune.harmony.naming import spell_root
 from retune.harmony.segment import Segmentation
-from retune.harmony.states import QUALITIES, QUALITY_OF, ROOT_OF, ROOTS, Bools, Floats, Ints
+from retune.harmony.states import QUALITIES, QUALITY_OF, ROOT_OF, ROOTS, Floats, Ints
 from retune.harmony.timeline import Timeline
 
-BREATH = 1.0
+BREATH = 2.0
 """Quarter notes."""
+LONE_LINE = 0.6
 WORTH_NAMING = 0.005
 """Least probability of a runner-up."""
 
 _SPELLINGS = 1024
 
-Run = tuple[int, int, int | None]
-"""First slice, last slice (excluded) and state; None for silence."""
+_MAJOR, _MINOR = (QUALITIES.index(quality) for quality in (Quality.MAJOR, Quality.MINOR))
+_SILENCE = -1
+"""The state of slices in which nothing sounds and no chord lasts."""
 
 
 def make_chords(timeline: Timeline, evidence: Evidence, found: Segmentation) -> tuple[Chord, ...]:
     """The chords of a segmentation, covering all slices."""
-    runs = _joined(_runs(evidence, found))
-    if not runs:
+    if evidence.count == 0:
         return ()
-    firsts = np.array([first for first, _, _ in runs])
-    shares = _shares(evidence, found, firsts)
+    states = _plain_where_lone(evidence, _with_rests(evidence, found.states))
+    firsts = _firsts(states)
+    lasts = [*firsts[1:].tolist(), evidence.count]
+    shares = _shares(evidence, found, firsts) * _trust(evidence, firsts)[:, None, None]
     heard = _heard(evidence, firsts)
     return tuple(
-        _chord(index, run, timeline, shares[index], heard[index]) for index, run in enumerate(runs)
+        _chord(index, (first, last), int(states[first]), timeline, shares[index], heard[index])
+        for index, (first, last) in enumerate(zip(firsts.tolist(), lasts, strict=True))
     )
 
 
-def _runs(evidence: Evidence, found: Segmentation) -> Iterator[Run]:
-    silent = evidence.bass < 0
-    length = evidence.length
-    bounds = found.bounds.tolist()
-    for first, last, state in zip(bounds, bounds[1:], found.states.tolist(), strict=False):
-        yield from _without_silence(first, last, state, silent, length)
+def _firsts(states: Ints) -> Ints:
+    """First slice of each run of one state."""
+    return np.flatnonzero(np.diff(states, prepend=_SILENCE - 1))
 
 
-def _without_silence(
-    first: int, last: int, state: int, silent: Bools, length: Floats
-) -> Iterator[Run]:
-    """Cut a segment at its silent edges and at long silences inside."""
-    start = first
-    while start < last:
-        quiet = bool(silent[start])
-        stop = start + 1
-        while stop < last and bool(silent[stop]) == quiet:
-            stop += 1
-        lasting = float(length[start:stop].sum())
-        edge = start == first or stop == last
-        yield start, stop, None if quiet and (edge or lasting >= BREATH) else state
-        start = stop
+def _plain_where_lone(evidence: Evidence, states: Ints) -> Ints:
+    """States made major or minor, as the surroundings have it, where one pitch class sounds."""
+    firsts = _firsts(states)
+    lone = np.add.reduceat(evidence.held, firsts, axis=0).astype(bool).sum(axis=1) == 1
+    root = states[firsts] // len(QUALITIES)
+    run, near = np.arange(len(firsts)), evidence.profile[firsts]
+    minor = near[run, (root + 3) % 12] > near[run, (root + 4) % 12]
+    plain = root * len(QUALITIES) + np.where(minor, _MINOR, _MAJOR)
+    lasting = np.diff(firsts, append=evidence.count)
+    return np.where(np.repeat(lone, lasting), np.repeat(plain, lasting), states)
 
 
-def _joined(runs: Iterator[Run]) -> list[Run]:
-    joined: list[Run] = []
-    for first, last, state in runs:
-        if joined and joined[-1][2] == state:
-            joined[-1] = (joined[-1][0], last, state)
-        else:
-            joined.append((first, last, state))
-    return joined
+def _trust(evidence: Evidence, firsts: Ints) -> Floats:
+    """How far the posterior is to be believed, `LONE_LINE` to 1, by run."""
+    tones = evidence.sounding.sum(axis=1)
+    sounding = np.add.reduceat(evidence.length * (tones > 0), firsts)
+    alone = np.add.reduceat(evidence.length * (tones == 1), firsts)
+    return np.asarray(1 - (1 - LONE_LINE) * alone / np.maximum(sounding, TOLERANCE))
+
+
+def _with_rests(evidence: Evidence, states: Ints) -> Ints:
+    """States with silence in its place: short rests last with the chord before."""
+    states = states.copy()
+    silent = np.concatenate([[False], evidence.bass < 0, [False]])
+    starts = np.flatnonzero(silent[1:] & ~silent[:-1])
+    ends = np.flatnonzero(silent[:-1] & ~silent[1:])
+    for start, end in zip(starts.tolist(), ends.tolist(), strict=True):
+        lasts = start > 0 and evidence.time[end] - evidence.time[start] <= BREATH + TOLERANCE
+        states[start:end] = states[start - 1] if lasts else _SILENCE
+    return states
 
 
 def _chord(
-    index: int, run: Run, timeline: Timeline, shares: Floats, heard: list[tuple[int, float]]
+    index: int,
+    slices: tuple[int, int],
+    state: int,
+    timeline: Timeline,
+    shares: Floats,
+    heard: list[tuple[int, float]],
 ) -> Chord:
-    first, last, state = run
+    first, last = slices
     onset = timeline.boundaries[first]
     duration = timeline.boundaries[last] - onset
-    if state is None:
+    if state == _SILENCE:
         return Chord(index, onset, duration, first, last, None, None, 1.0)
     root, quality = int(ROOT_OF[state]), QUALITIES[QUALITY_OF[state]]
     by_root = shares.sum(axis=1)

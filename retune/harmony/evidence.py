@@ -15,11 +15,10 @@ import numpy as np
 
 from retune.harmony.fragments import cut_notes
 from retune.harmony.metre import TOLERANCE, grid_points, metric_levels
+from retune.harmony.model import Quality
 from retune.harmony.naming import FIFTHS_OF_INTERVAL
 from retune.harmony.states import (
     QUALITIES,
-    QUALITY_OF,
-    ROOT_OF,
     ROOTS,
     STATES,
     TONES,
@@ -27,6 +26,7 @@ from retune.harmony.states import (
     Floats,
     Ints,
 )
+from retune.harmony.symbols import read_symbols
 from retune.harmony.timeline import Timeline
 from retune.score.model import Score
 
@@ -59,7 +59,10 @@ class Evidence:
     profile : float64 array, shape (n, 12)
         Share of each pitch class in the sounding time around the slice.
     misspelt : int8 array, shape (n, 120)
-        Chord tones per state that the notation spells as another interval above its root.
+        Tones of augmented and diminished seventh chords that the notation spells as another
+        interval above the root.
+    symbols : int8 array, shape (n, 120)
+        1 for the root of the chord symbol in force, 2 for its root and quality.
     cells, fifths, approaches : int64 arrays, shape (incidences,)
         12 * slice + pitch class, place of the spelling on the line of fifths, and approach, of
         every piece in every slice it touches.
@@ -77,6 +80,7 @@ class Evidence:
     sounding: Floats
     profile: Floats
     misspelt: Bytes
+    symbols: Bytes
     cells: Ints
     fifths: Ints
     approaches: Ints
@@ -132,6 +136,7 @@ def gather_evidence(score: Score, timeline: Timeline) -> Evidence:
         sounding=(voices > 0).astype(np.float64),
         profile=_profile(held, timeline.time),
         misspelt=_misspelt(fifths.reshape(-1, ROOTS)),
+        symbols=read_symbols(score.chord_symbols, timeline.time),
         cells=cells,
         fifths=timeline.fifths[note],
         approaches=pieces.approach[piece],
@@ -169,13 +174,18 @@ def _profile(held: Floats, time: Floats) -> Floats:
 
 
 def _misspelt(fifths: Ints) -> Bytes:
-    """Chord tones per state that the notation spells as another interval, shape (n, 120)."""
+    """Chord tones per state that the notation spells as another interval, shape (n, 120).
+
+    Only for chords that divide the octave evenly, whose root nothing but the notation tells;
+    elsewhere what sounds is better evidence than how it is written.
+    """
     heard = fifths != _UNHEARD
     wrong = np.zeros((len(fifths), STATES), dtype=np.int8)
-    for state in range(STATES):
-        root = ROOT_OF[state]
-        for interval in TONES[QUALITIES[QUALITY_OF[state]]][1:]:
-            tone = (root + interval) % 12
-            apart = fifths[:, tone] - fifths[:, root] != FIFTHS_OF_INTERVAL[interval]
-            wrong[:, state] += heard[:, root] & heard[:, tone] & apart
+    for quality in (Quality.AUGMENTED, Quality.DIMINISHED_SEVENTH):
+        for root in range(ROOTS):
+            state = root * len(QUALITIES) + QUALITIES.index(quality)
+            for interval in TONES[quality][1:]:
+                tone = (root + interval) % 12
+                apart = fifths[:, tone] - fifths[:, root] != FIFTHS_OF_INTERVAL[interval]
+                wrong[:, state] += heard[:, root] & heard[:, tone] & apart
     return wrong

@@ -3,8 +3,9 @@
 Conventions
 -----------
 * A slice is the time between two neighbouring onsets or releases of any part.
-* A chord is a run of slices with one local root and one quality. Chords cover the whole piece;
-  where nothing sounds, root and quality are None.
+* A chord is a run of slices with one local root and one quality. Chords cover the whole piece.
+  A short rest of all parts belongs to the chord before it; in longer silence root and quality
+  are None.
 * Slice ranges are half open: `first` to `last`, last excluded.
 * Note indices point into `Score.notes`. Grace notes are in no slice.
 """

@@ -156,7 +156,9 @@ def make_scorer(evidence: Evidence, weights: Weights) -> SegmentScorer:
         + evidence.begun @ by_state(weights["count"])
         + nonchord @ (DEGREE_OF == NON_CHORD)
     )
-    tones += weights["misspelt"][0] * evidence.misspelt * evidence.length[:, None]
+    said = weights["misspelt"][0] * evidence.misspelt
+    said += weights["chord_symbol"][0] * evidence.symbols
+    tones += said * evidence.length[:, None]
     cover = (evidence.sounding * evidence.length[:, None]) @ by_state(weights["coverage"])
     silent = evidence.bass < 0
     first = by_state(weights["first_bass"])[evidence.bass]

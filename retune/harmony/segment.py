@@ -28,33 +28,27 @@ LANES = 16
 
 @dataclass(frozen=True)
 class Segmentation:
-    """Chords as slice ranges with their states, and the posterior of every state.
+    """The state of every slice, and the posterior it was chosen by.
 
     Parameters
     ----------
-    bounds : int64 array, shape (segments + 1,)
-        First slice of each segment, then the number of slices.
-    states : int64 array, shape (segments,)
+    states : int64 array, shape (n,)
     posterior : float32 array, shape (n, 120)
         Probability of each state in each slice.
     """
 
-    bounds: Ints
     states: Ints
     posterior: Singles
 
 
 def segment(evidence: Evidence, weights: Weights) -> Segmentation:
-    """Find the chords of a piece."""
+    """Find the state of every slice."""
     scorer = make_scorer(evidence, weights)
     shares = _state_shares(scorer, np.exp(motion_scores(weights)))
-    count = len(shares)
-    by_root = shares.reshape(count, ROOTS, len(QUALITIES))
+    by_root = shares.reshape(-1, ROOTS, len(QUALITIES))
     root = by_root.sum(axis=2).argmax(axis=1)
-    quality = by_root[np.arange(count), root].argmax(axis=1)
-    state = root * len(QUALITIES) + quality
-    changes = np.flatnonzero(np.diff(state, prepend=-1))
-    return Segmentation(np.append(changes, count), state[changes], shares)
+    quality = by_root[np.arange(len(shares)), root].argmax(axis=1)
+    return Segmentation(root * len(QUALITIES) + quality, shares)
 
 
 def _state_shares(scorer: SegmentScorer, odds: Floats) -> Singles:

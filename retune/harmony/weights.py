@@ -35,6 +35,7 @@ TERMS: dict[str, tuple[str, ...]] = {
     "last_tones": (*_CHORD, "non-chord"),
     "profile": _CHORD,
     "misspelt": ("quarter",),
+    "chord_symbol": ("quarter",),
     "start_level": _LEVELS,
     "crossed_level": _LEVELS,
     "attack": ("share",),
