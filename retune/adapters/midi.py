@@ -79,7 +79,7 @@ def read_midi_file(data: bytes, limits: Limits | None = None) -> RawMidi:
     if data[:4] != b"MThd":
         raise UnreadableError("not a MIDI file: it does not start with MThd")
     chunks = _chunks(data)
-    _, header = next(chunks)
+    _, header = next(chunks, (b"", b""))
     if len(header) < 6:
         raise UnreadableError("the MIDI header is too short", hint=DAMAGED)
     kind, count = header[1] | header[0] << 8, header[3] | header[2] << 8

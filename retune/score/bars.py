@@ -17,7 +17,6 @@ from itertools import zip_longest
 from typing import TypeVar
 
 from retune.errors import Weight
-from retune.score.jumps import jumps_in
 from retune.score.ledger import Ledger
 from retune.written import Mark, MarkKind, WrittenBar, WrittenPart, WrittenScore
 
@@ -25,13 +24,24 @@ T = TypeVar("T", bound=Hashable)
 
 DEFAULT_METRE = (4, 4)
 
+JUMP_KINDS = frozenset(
+    {
+        MarkKind.SEGNO,
+        MarkKind.CODA,
+        MarkKind.FINE,
+        MarkKind.DA_CAPO,
+        MarkKind.DAL_SEGNO,
+        MarkKind.TO_CODA,
+    }
+)
+
 
 @dataclass(frozen=True, slots=True)
 class Frame:
     """One bar of the score as written, all parts together.
 
     `begins` is where in its metre the bar starts, in quarter notes; `jumps` holds segno, coda,
-    Fine, D.C. and the like of all parts, words among them already understood.
+    Fine, D.C. and the like of all parts.
     """
 
     index: int
@@ -125,11 +135,10 @@ def last_note_end(bar: WrittenBar) -> Fraction:
 def _jumps(bars: Sequence[WrittenBar]) -> tuple[Mark, ...]:
     """Jump signs of all parts, each kind once; the one that says how it ends wins."""
     signs: dict[MarkKind, Mark] = {}
-    for mark in (mark for bar in bars for mark in bar.marks):
-        for sign in jumps_in(mark):
-            known = signs.get(sign.kind)
-            if known is None or (sign.value and not known.value):
-                signs[sign.kind] = sign
+    for sign in (mark for bar in bars for mark in bar.marks if mark.kind in JUMP_KINDS):
+        known = signs.get(sign.kind)
+        if known is None or (sign.value and not known.value):
+            signs[sign.kind] = sign
     return tuple(signs.values())
 
 

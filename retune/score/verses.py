@@ -114,10 +114,10 @@ def with_shared_words(lines: Sequence[Line], ledger: Ledger) -> list[Line]:
         result[place] = _reading(
             line, [o for o in others if (o.written, o.staff) == (line.written, line.staff)]
         )
-    with_words = [place for place in singing if _has_words(result[place])]
+    with_words = [place for place in singing if _has_words(lines[place])]
     borrowers: dict[str, list[str]] = {}
     for place in singing if with_words else ():
-        if place not in with_words:
+        if not _has_words(result[place]):
             nearest = result[min(with_words, key=lambda other: (abs(other - place), other))]
             result[place] = _reading(result[place], [nearest])
             borrowers.setdefault(nearest.label.name, []).append(lines[place].label.name)

@@ -17,7 +17,7 @@ from retune.score.build import build_score
 from retune.score.musicxml import read_musicxml
 from retune.score.options import ReadOptions
 from retune.written import MarkKind, WrittenBar
-from tests.score.written_text import bar, bar_numbers, mark, part, play, remarks, words
+from tests.score.written_text import bar, bar_numbers, mark, part, play, remarks
 
 SUITE = Path(music21.__file__).parent / "musicxml" / "lilypondTestSuite"
 
@@ -125,8 +125,8 @@ def test_a_sign_in_the_first_half_of_a_bar_leads_to_that_bar() -> None:
     first = bar("C5/4")
     second = bar("C5/4", marks=(mark(MarkKind.SEGNO),))
     late = bar("C5/4", marks=(mark(MarkKind.SEGNO, onset=3),))
-    third = bar("C5/4", marks=(words("D.S. al Fine", 3),))
-    fine = bar("C5/4", marks=(words("Fine", 3),))
+    third = bar("C5/4", marks=(mark(MarkKind.DAL_SEGNO, "fine", 3),))
+    fine = bar("C5/4", marks=(mark(MarkKind.FINE, None, 3),))
     assert bar_numbers(play(part("Alto", first, second, fine, third))) == "1 2 3 4 2 3"
     assert bar_numbers(play(part("Alto", first, late, fine, third))) == "1 2 3 4 3"
 
@@ -145,7 +145,11 @@ def test_two_coda_signs_without_words() -> None:
 
 def test_signs_of_any_part_hold_for_all() -> None:
     top = part("Soprano", bar("C5/4"), bar("C5/4", repeat_end=2))
-    low = part("Bass", bar("C3/4", marks=(words("Fine"),)), bar("C3/4", marks=(words("D.C."),)))
+    low = part(
+        "Bass",
+        bar("C3/4", marks=(mark(MarkKind.FINE),)),
+        bar("C3/4", marks=(mark(MarkKind.DA_CAPO),)),
+    )
     score = play(top, low)
     assert bar_numbers(score) == "1 2 1 2 1"
     assert len([note for note in score.notes if note.part == 1]) == 5
