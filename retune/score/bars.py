@@ -196,7 +196,7 @@ def _explained(frame: Frame, after: Frame | None) -> bool:
 def _report_part(part: WrittenPart, frames: Sequence[Frame], ledger: Ledger) -> None:
     name = part.name or part.id
     if len(part.bars) < len(frames):
-        what = f"has {len(part.bars)} bars where the score has {len(frames)}; silent from here"
+        what = "has fewer bars than the score; silent from here on"
         ledger.add(Weight.DOUBT, what, name, len(part.bars))
     for bar, frame in zip(part.bars, frames, strict=False):
         if bar.length > frame.length >= frame.full:

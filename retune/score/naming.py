@@ -97,7 +97,7 @@ def _check_octave(line: Line, ledger: Ledger) -> None:
     octave = 12 if mean < low else -12
     if low <= mean + octave <= high:
         where = "low" if octave > 0 else "high"
-        what = f"lies an octave {where} for a {line.label.voice_type}; check its clef"
+        what = f"lies an octave too {where} for its voice ({line.label.voice_type}); check its clef"
         ledger.add(Weight.DOUBT, what, line.label.name)
 
 

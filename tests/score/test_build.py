@@ -43,7 +43,7 @@ def test_an_empty_bar_is_as_long_as_its_metre() -> None:
 def test_bars_that_are_missing_at_the_end() -> None:
     score = play(part("Soprano", "C5/4", "D5/4"), part("Bass", "C3/4"))
     assert len(score.bars) == 2
-    assert remarks(score, "Bass, bar 2: has 1 bars where the score has 2")
+    assert remarks(score, "Bass, bar 2: has fewer bars than the score")
 
 
 def test_pick_up_and_split_bars() -> None:

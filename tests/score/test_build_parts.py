@@ -174,7 +174,7 @@ def test_instrument_and_program_help_where_the_name_does_not() -> None:
 
 
 def test_a_voice_in_the_wrong_octave_is_doubted() -> None:
-    assert remarks(play(part("Tenor", "C5/4 D5/4")), "an octave high for a tenor")
+    assert remarks(play(part("Tenor", "C5/4 D5/4")), "an octave too high for its voice (tenor)")
     assert not remarks(play(part("Tenor", "C4/4 D4/4")), "octave")
 
 
