@@ -26,7 +26,7 @@ from retune.harmony.states import (
     Floats,
     Ints,
 )
-from retune.harmony.symbols import read_symbols
+from retune.harmony.written_symbols import read_symbols
 from retune.harmony.timeline import Timeline
 from retune.score.model import Score
 
