@@ -34,7 +34,7 @@ _MEGABYTE = 1024 * 1024
 _HELD_SHIFT_WORDS = {"none": 0.0, "any": NO_BOUND}
 
 
-class HeldShift(click.ParamType):
+class HeldShift(click.ParamType[Any]):
     """Cents, or none (a sounding note never moves), or any (no bound)."""
 
     name = "cents|none|any"
@@ -54,7 +54,7 @@ class HeldShift(click.ParamType):
         return cents
 
 
-class Tonic(click.ParamType):
+class Tonic(click.ParamType[Any]):
     """A spelled pitch class, such as D or Bb."""
 
     name = "pitch"
@@ -302,7 +302,7 @@ def source_of(score: Path) -> tuple[Path | bytes, str]:
     return score, str(score)
 
 
-class SettingType(click.ParamType):
+class SettingType(click.ParamType[Any]):
     """EXPORTER.OPTION=VALUE."""
 
     name = "exporter.option=value"

@@ -26,8 +26,8 @@ from retune.harmony.states import (
     Floats,
     Ints,
 )
-from retune.harmony.written_symbols import read_symbols
 from retune.harmony.timeline import Timeline
+from retune.harmony.written_symbols import read_symbols
 from retune.score.model import Score
 
 NEARBY = 8.0
