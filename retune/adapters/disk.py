@@ -4,7 +4,7 @@ Every file is staged in a hidden folder inside the target folder, flushed to the
 for its check, and only then renamed to its place. Whatever stops the run, an error, an
 interrupt, a full disk, is undone: staged files, files placed already, folders made. A hidden
 manifest lists what was written with its SHA-256; only a file that it lists, unchanged, is ever
-replaced.
+replaced, or taken away where a numbered series has become shorter.
 """
 
 from __future__ import annotations
@@ -54,6 +54,10 @@ class Writable(Protocol):
     @property
     def note(self) -> str:
         """One line for the user, or empty."""
+
+    @property
+    def series(self) -> str:
+        """What numbered set the file belongs to, or empty."""
 
     @property
     def check(self) -> Callable[[bytes], str] | None:
@@ -129,14 +133,17 @@ def _write(files: Sequence[Writable], folder: Path, undo: _Undo) -> WriteReport:
     _stage_all(files, staged, folder)
     written = tuple(_read_back(file, staged[file.name], folder) for file in files)
     digests = {file.name: digest_of(file.data) for file in files}
+    series = {file.name: file.series for file in files if file.series}
+    stale = manifest.superseded(digests, set(series.values()))
     # Old and new digests both stand while files are renamed, so that even after a power cut
     # the next run knows every file as the tool's own.
-    _save(manifest.with_both(digests), folder, staging, undo)
+    _save(manifest.with_both(digests, series), folder, staging, undo)
     for name, path in staged.items():
         with _explained(folder / name):
             _make_folder((folder / name).parent, undo)
             _place(path, folder / name, undo)
-    _save(manifest.with_only(digests), folder, staging, undo)
+    gone = [name for name in stale if _take_away(name, folder, staging, manifest, undo)]
+    _save(manifest.with_only(digests, series, gone), folder, staging, undo)
     # Undo is over: from here on the files stand, and an interrupt comes too late.
     undo.clear()
     shutil.rmtree(staging, ignore_errors=True)
@@ -255,6 +262,20 @@ def _remove(target: Path, staged: Path) -> None:
     """Take away a file placed by this run, which is so if it is staged no more."""
     if not staged.exists():
         target.unlink(missing_ok=True)
+
+
+def _take_away(name: str, folder: Path, staging: Path, manifest: Manifest, undo: _Undo) -> bool:
+    """Remove a file of an earlier run, unless somebody has changed it since; whether it is gone."""
+    try:
+        _require_replaceable(folder, name, manifest)
+    except OutputError:
+        return False
+    path, kept = folder / name, staging / f"{digest_of(name.encode())}.gone"
+    with _explained(path):
+        if _mode(path) is not None:
+            undo.append(lambda: _bring_back(kept, path))
+            path.rename(kept)
+    return True
 
 
 def _bring_back(kept: Path, target: Path) -> None:

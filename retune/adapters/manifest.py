@@ -4,8 +4,8 @@ from __future__ import annotations
 
 import hashlib
 import json
-from collections.abc import Mapping
-from dataclasses import dataclass
+from collections.abc import Collection, Mapping
+from dataclasses import dataclass, field
 from pathlib import Path
 from typing import Any
 
@@ -32,9 +32,14 @@ def digest_of_file(path: Path) -> str:
 
 @dataclass(frozen=True, slots=True)
 class Manifest:
-    """Digests by name; a name has two while a run replaces its file, else one."""
+    """Digests by name; a name has two while a run replaces its file, else one.
+
+    `series` names the series of each file that belongs to one, such as the numbered tables of
+    a piece: of those, a later run may write fewer.
+    """
 
     digests: Mapping[str, tuple[str, ...]]
+    series: Mapping[str, str] = field(default_factory=dict)
 
     @classmethod
     def load(cls, path: Path) -> Manifest:
@@ -57,28 +62,41 @@ class Manifest:
             raise _not_ours(path) from None
         if not _is_manifest(found):
             raise _not_ours(path)
-        return cls({name: tuple(digests) for name, digests in found["files"].items()})
+        digests = {name: tuple(digests) for name, digests in found["files"].items()}
+        return cls(digests, found.get("series", {}))
 
-    def with_both(self, new: Mapping[str, str]) -> Manifest:
+    def with_both(self, new: Mapping[str, str], series: Mapping[str, str]) -> Manifest:
         """Old and new digests side by side."""
         merged = {name: (*self.digests.get(name, ()), digest) for name, digest in new.items()}
-        return Manifest({**self.digests, **merged})
+        return Manifest({**self.digests, **merged}, {**self.series, **series})
 
-    def with_only(self, new: Mapping[str, str]) -> Manifest:
-        """The new digests in place of the old."""
-        return Manifest({**self.digests, **{name: (digest,) for name, digest in new.items()}})
+    def with_only(
+        self, new: Mapping[str, str], series: Mapping[str, str], gone: Collection[str]
+    ) -> Manifest:
+        """The new digests in place of the old, without the files that are gone."""
+        digests = {**self.digests, **{name: (digest,) for name, digest in new.items()}}
+        kept = {name: digests[name] for name in digests if name not in gone}
+        every = {**{name: self.series[name] for name in self.series if name not in new}, **series}
+        return Manifest(kept, {name: every[name] for name in every if name in kept})
+
+    def superseded(self, new: Collection[str], series: Collection[str]) -> list[str]:
+        """Files of these series that an earlier run wrote and this one does not."""
+        return [name for name, one in self.series.items() if one in series and name not in new]
 
     def to_bytes(self) -> bytes:
         """The file's content."""
         files = {name: list(digests) for name, digests in sorted(self.digests.items())}
-        document = {"format": _FORMAT, "version": 1, "files": files}
+        series = dict(sorted(self.series.items()))
+        document = {"format": _FORMAT, "version": 1, "files": files, "series": series}
         return json.dumps(document, indent=1, ensure_ascii=False).encode("utf-8") + b"\n"
 
 
 def _is_manifest(found: Any) -> bool:
     if not isinstance(found, dict) or found.get("format") != _FORMAT:
         return False
-    files = found.get("files")
+    files, series = found.get("files"), found.get("series", {})
+    if not isinstance(series, dict) or not all(isinstance(one, str) for one in series.values()):
+        return False
     return isinstance(files, dict) and all(
         isinstance(digests, list) and all(isinstance(digest, str) for digest in digests)
         for digests in files.values()

@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING
 
 import click
 
-from retune.cli.console import working
+from retune.cli.console import say, working, wrapped
 from retune.cli.options import (
     examples,
     grouped,
@@ -18,10 +18,13 @@ from retune.cli.options import (
     talk_options,
     tuning_options,
 )
-from retune.cli.report import report_findings, report_written
+from retune.cli.report import report_findings, written_lines
 from retune.errors import WishError
 
 if TYPE_CHECKING:
+    from collections.abc import Sequence
+
+    from retune.export.base import OutputFile
     from retune.score.options import ReadOptions
     from retune.tuning.policy import Policy
 
@@ -79,20 +82,24 @@ def command(
     with working(f"Tuning {name}", quiet):
         tuned = pipeline.retuned(source, name, reading, policy)
     if output == "-":
-        files = pipeline.exported(pipeline.takes_of(tuned), chosen, wishes)
-        if len(files) != 1:
-            raise WishError(
-                f"standard output takes one file, and this makes {len(files)}",
-                hint="Choose one output with a single file, such as --to midi, or give a folder",
-            )
-        stdout = sys.stdout.buffer
-        stdout.write(files[0].data)
-        stdout.flush()
-        report = None
+        notes = [_sent(pipeline.exported(pipeline.takes_of(tuned), chosen, wishes))]
     else:
         with working("Writing", quiet):
-            report = pipeline.write(tuned, chosen, output, wishes)
+            notes = written_lines(pipeline.write(tuned, chosen, output, wishes))
     if not quiet:
         report_findings(tuned, all_findings)
-        if report is not None:
-            report_written(report)
+        say("\n".join(notes))
+
+
+def _sent(files: Sequence[OutputFile]) -> str:
+    """Send the only file to standard output, checked; returns what is to be said of it."""
+    if len(files) != 1:
+        raise WishError(
+            f"standard output takes one file, and this makes {len(files)}",
+            hint="Choose one output with a single file, such as --to midi, or give a folder",
+        )
+    (file,) = files
+    checked = file.check(file.data) if file.check is not None else ""
+    sys.stdout.buffer.write(file.data)
+    sys.stdout.buffer.flush()
+    return wrapped("; ".join(line for line in (file.note, checked) if line))

@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING
 
 import click
 
-from retune.cli.console import working
+from retune.cli.console import say, working
 from retune.cli.options import (
     examples,
     grouped,
@@ -17,7 +17,7 @@ from retune.cli.options import (
     talk_options,
     tuning_options,
 )
-from retune.cli.report import report_findings, report_written, summary
+from retune.cli.report import report_findings, summary, written_lines
 
 if TYPE_CHECKING:
     from retune.score.options import ReadOptions
@@ -71,6 +71,6 @@ def command(
     with working("Writing", quiet):
         report = pipeline.make(tuned, folder, wishes)
     if not quiet:
-        click.echo(summary(tuned), err=True)
+        say(summary(tuned))
         report_findings(tuned, all_findings)
-        report_written(report)
+        say("\n".join(written_lines(report)))

@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING
 
 import click
 
-from retune.cli.console import print_findings, say, wrapped
+from retune.cli.console import print_findings, wrapped
 
 if TYPE_CHECKING:
     from retune.adapters.disk import WriteReport, WrittenFile
@@ -69,14 +69,17 @@ def _about(file: WrittenFile, alone: bool) -> str:
     return words if alone else f"{file.name.rpartition('/')[2]}: {words}"
 
 
-def report_written(report: WriteReport) -> None:
+def written_lines(report: WriteReport) -> list[str]:
     """The files written, folder by folder, and what is to be said of them."""
-    say(f"Wrote {counted(len(report.written), 'file')} to {report.folder}")
+    lines = [f"Wrote {counted(len(report.written), 'file')} to {report.folder}"]
     for folder, group in groupby(report.written, key=lambda file: _folder_of(file.name)):
         files = list(group)
         alone = len(files) == 1
         what = files[0].name.removeprefix(folder) if alone else counted(len(files), "file")
-        say(f"  {folder:<8} {what}" if folder else f"  {what}")
-        for file in files:
-            if file.note or file.checked:
-                say(wrapped(f"           {_about(file, alone)}", " " * 11))
+        lines.append(f"  {folder:<8} {what}" if folder else f"  {what}")
+        lines += [
+            wrapped(f"           {_about(file, alone)}", " " * 11)
+            for file in files
+            if file.note or file.checked
+        ]
+    return lines

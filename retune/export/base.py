@@ -25,12 +25,16 @@ class OutputFile:
         Called with the bytes as read back from disk, before the file takes its final name.
         Returns a line for the user; raises `OutputError` where they do not mean what the
         tuned score says.
+    series : str
+        A numbered set that the file belongs to, such as the tables of one piece. Files that an
+        earlier run wrote in the same series and this run does not are taken away.
     """
 
     name: str
     data: bytes
     note: str = ""
     check: Callable[[bytes], str] | None = None
+    series: str = ""
 
 
 class Exporter(Protocol):

@@ -10,7 +10,7 @@ from collections.abc import Iterable
 
 from retune.adapters.filenames import FORBIDDEN, MAX_NAME_BYTES, is_reserved
 
-_BYTES = MAX_NAME_BYTES // 2
+_BYTES = (MAX_NAME_BYTES - len(" - .notes.json")) // 2
 """Room for one name in a file name that joins two, with an ending."""
 
 

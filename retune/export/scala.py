@@ -8,7 +8,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterator, Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from itertools import groupby
 from typing import ClassVar
 
@@ -125,7 +125,8 @@ class _Piece:
             for number, group in enumerate(groups, start=1)
         ]
         for name, group, table in zip(names, groups, tables, strict=True):
-            yield from self._files(name, table, self._words(group, table), "")
+            files = self._files(name, table, self._words(group, table), "")
+            yield from (replace(file, series=f"tables/{self._stem}") for file in files)
         error = _error(self._tunings, groups, tables)
         note = f"{len(groups)} tables; {error.words(self._tuned)}" if error else "no chord sounds"
         rows = csv_bytes(_COLUMNS, self._rows(groups, names))

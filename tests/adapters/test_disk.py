@@ -26,6 +26,7 @@ class Output:
     data: bytes = b"new"
     note: str = ""
     check: Callable[[bytes], str] | None = None
+    series: str = ""
 
 
 def contents(folder: Path) -> dict[str, bytes]:
@@ -61,6 +62,20 @@ def test_own_files_are_replaced_and_others_of_the_tool_kept(tmp_path: Path) -> N
     write_all([Output("a", b"2")], tmp_path)
     write_all([Output("a", b"3"), Output("b", b"3")], tmp_path)
     assert contents(tmp_path) == {"a": b"3", "b": b"3"}
+
+
+def test_a_shorter_series_takes_the_longer_ones_rest_away(tmp_path: Path) -> None:
+    write_all([Output(f"hymn {n}", series="hymn") for n in "1234"], tmp_path)
+    write_all([Output("song 1", series="song"), Output("hymn 5")], tmp_path)
+    (tmp_path / "hymn 4").write_bytes(b"mine now")
+    write_all([Output(f"hymn {n}", b"newer", series="hymn") for n in "12"], tmp_path)
+    assert contents(tmp_path) == {
+        "hymn 1": b"newer",
+        "hymn 2": b"newer",
+        "hymn 4": b"mine now",
+        "hymn 5": b"new",
+        "song 1": b"new",
+    }
 
 
 def test_the_manifest_holds_sha256_digests(tmp_path: Path) -> None:
@@ -238,7 +253,7 @@ STEPS = [
     *((Path, "write_bytes", call) for call in (1, 2)),
     *((disk.os, "fsync", call) for call in (1, 2, 3, 4)),
     *((Path, "read_bytes", call) for call in (1, 2, 3)),
-    *((Path, "rename", call) for call in range(1, 8)),
+    *((Path, "rename", call) for call in range(1, 9)),
     *((Path, "mkdir", call) for call in (1, 2)),
 ]
 
@@ -255,13 +270,13 @@ def test_whatever_step_fails_all_is_as_it_was(
     call: int,
     error: BaseException,
 ) -> None:
-    write_all([Output("a", b"old"), Output("c", b"old")], tmp_path)
+    write_all([Output("a", b"old", series="s"), Output("c", b"old", series="s")], tmp_path)
     before, manifest = everything(tmp_path), (tmp_path / MANIFEST_NAME).read_bytes()
     expected = KeyboardInterrupt if isinstance(error, KeyboardInterrupt) else OutputError
     with monkeypatch.context() as patch:
         patch.setattr(owner, method, fail_at(call, getattr(owner, method), error))
         with pytest.raises(expected):
-            write_all([Output("a", b"new"), Output("new/b", b"new")], tmp_path)
+            write_all([Output("a", b"new", series="s"), Output("new/b", b"new")], tmp_path)
     assert everything(tmp_path) == before
     assert contents(tmp_path) == {"a": b"old", "c": b"old"}
     assert (tmp_path / MANIFEST_NAME).read_bytes() == manifest
