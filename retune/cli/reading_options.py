@@ -1,0 +1,84 @@
+"""How a score is read, as options."""
+
+from __future__ import annotations
+
+from typing import Any
+
+import click
+
+from retune.cli.stacking import gathered, stacked
+from retune.limits import Limits
+from retune.score.options import ReadOptions
+
+_MEGABYTE = 1024 * 1024
+
+_READING = stacked(
+    click.option(
+        "--accompaniment",
+        multiple=True,
+        metavar="PART",
+        help="A part whose pitch cannot move; may be repeated.",
+    ),
+    click.option(
+        "--repeats/--no-repeats", default=True, show_default=True, help="Play repeats and jumps."
+    ),
+    click.option(
+        "--fermatas/--no-fermatas", default=True, show_default=True, help="Hold the fermatas."
+    ),
+    click.option(
+        "--piece", type=click.IntRange(1), metavar="N", help="Which piece of a file with several."
+    ),
+    click.option(
+        "--max-megabytes",
+        type=click.FloatRange(0, min_open=True),
+        metavar="N",
+        default=f"{Limits().max_bytes / _MEGABYTE:g}",
+        show_default=True,
+        help="Largest score, unzipped.",
+    ),
+    click.option(
+        "--max-notes",
+        type=click.IntRange(1),
+        metavar="N",
+        default=Limits().max_notes,
+        show_default=True,
+        help="Most notes, repeats played out.",
+    ),
+    click.option(
+        "--max-minutes",
+        type=click.FloatRange(0, min_open=True),
+        metavar="N",
+        default=f"{Limits().max_seconds / 60:g}",
+        show_default=True,
+        help="Longest playing time.",
+    ),
+)
+
+_READING_NAMES = (
+    "accompaniment",
+    "repeats",
+    "fermatas",
+    "piece",
+    "max_megabytes",
+    "max_notes",
+    "max_minutes",
+)
+
+
+def _reading(wishes: dict[str, Any]) -> ReadOptions:
+    limits = Limits(
+        max_bytes=int(wishes["max_megabytes"] * _MEGABYTE),
+        max_notes=wishes["max_notes"],
+        max_seconds=wishes["max_minutes"] * 60,
+    )
+    return ReadOptions(
+        repeats=wishes["repeats"],
+        fermatas=wishes["fermatas"],
+        accompaniment=wishes["accompaniment"],
+        piece=wishes["piece"],
+        limits=limits,
+    )
+
+
+reading_options = gathered(_READING, _READING_NAMES, "reading", _reading)
+"""Options on reading; the command gets `reading`."""
