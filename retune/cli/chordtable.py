@@ -10,6 +10,7 @@ from __future__ import annotations
 import textwrap
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
+from fractions import Fraction
 
 import click
 
@@ -21,7 +22,7 @@ from retune.tuning.model import Segment, TunedNote, TunedScore
 DOUBTFUL = 0.6
 """Confidence below which a root is marked with a question mark (our choice)."""
 
-_BAR, _BEAT, _CHORD = 5, 7, 8
+_BAR, _BEAT, _CHORD = 5, 6, 8
 _NUMBER = 3
 """Longest last word taken for a number: 2, II, III."""
 
@@ -166,13 +167,12 @@ def _legend(doubts: bool, others: bool, columns: int) -> list[str]:
     return ["", *(f" {line}" for line in textwrap.wrap(" ".join(words), columns - 1))]
 
 
-def beat_text(beat: object) -> str:
-    """A beat as a musician writes it.
+def beat_text(beat: Fraction) -> str:
+    """A beat as a musician writes it, to two places where its fraction is long.
 
-    >>> from fractions import Fraction
-    >>> [beat_text(Fraction(n, 2)) for n in (2, 5)]
-    ['1', '2 1/2']
+    >>> [beat_text(Fraction(n, 192)) for n in (192, 288, 319)]
+    ['1', '1 1/2', '1.66']
     """
-    numerator, denominator = getattr(beat, "numerator", 1), getattr(beat, "denominator", 1)
-    whole, rest = divmod(numerator, denominator)
-    return f"{whole} {rest}/{denominator}" if rest else str(whole)
+    whole, rest = divmod(beat, 1)
+    text = f"{whole} {rest}" if rest else str(whole)
+    return text if len(text) < _BEAT else f"{float(beat):.2f}"
