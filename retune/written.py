@@ -105,13 +105,17 @@ class WrittenChordSymbol:
     bass: PitchClass | None = None
 
 
+MarkValue = str | int | Fraction | WrittenChordSymbol | None
+"""What a `Mark` may carry; `MarkKind` says which kind carries what."""
+
+
 @dataclass(frozen=True, slots=True)
 class Mark:
     """A sign of a part at an onset of its bar; `staff` 0 means all staves of the part."""
 
     kind: MarkKind
     onset: Fraction
-    value: str | int | Fraction | WrittenChordSymbol | None = None
+    value: MarkValue = None
     staff: int = 0
     voice: str | None = None
 
