@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import contextlib
 from fractions import Fraction
 from pathlib import Path
 
@@ -170,10 +171,8 @@ def test_what_is_no_score_is_refused(format: str, data: bytes) -> None:
 
 @pytest.mark.parametrize("cut", range(10, len(HUMDRUM), 37))
 def test_cut_humdrum_never_crashes(cut: int) -> None:
-    try:
+    with contextlib.suppress(RetuneError):
         read_notation(HUMDRUM[:cut].encode(), "humdrum")
-    except RetuneError as error:
-        assert error.what
 
 
 def test_limits_hold() -> None:
