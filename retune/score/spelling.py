@@ -105,10 +105,16 @@ def _places(chromas: Sequence[int], section: range, fifths_of_key: int) -> Itera
     mean = sum(published) / len(published)
     middle = round(mean + _DIMINISHED_SECOND * round((wanted - mean) / _DIMINISHED_SECOND))
     for pc in _voted(chromas, section, _steps_around(middle)):
-        place = pc.fifths
-        if not _LOWEST <= place <= _HIGHEST:
-            place = middle + (place - middle) % _DIMINISHED_SECOND
-        yield place
+        yield _writable(pc.fifths)
+
+
+def _writable(place: int) -> int:
+    """The same key spelled without triple signs: a diminished second or two away."""
+    while place > _HIGHEST:
+        place -= _DIMINISHED_SECOND
+    while place < _LOWEST:
+        place += _DIMINISHED_SECOND
+    return place
 
 
 def _steps_around(middle: int) -> list[int]:

@@ -8,7 +8,7 @@ from fractions import Fraction
 from pathlib import Path
 
 import pytest
-from hypothesis import given
+from hypothesis import example, given
 from hypothesis import strategies as st
 from music21 import converter, corpus, note
 
@@ -98,6 +98,7 @@ def test_harmonic_minor_keeps_its_raised_seventh(keys: tuple[int, ...], names: s
     assert " ".join(p.name for p in spell(notes)) == names
 
 
+@example([(Fraction(0), key) for key in (0, 0, 0, 2, 2, 2, 8, 69)], 5)
 @given(
     st.lists(st.tuples(st.fractions(0, 99, max_denominator=12), st.integers(0, 127)), max_size=90),
     st.integers(-7, 7),
