@@ -1,11 +1,12 @@
 """How fast the main job is, as ratios measured in one run.
 
-    python tests/benchmarks/speed.py            both tables
+    python tests/benchmarks/speed.py            all tables
     python tests/benchmarks/speed.py --quick    fewer rounds, up to 10,000 notes
 
 1. The whole process ``retune export --to midi --to scala --to notes`` against the whole process
    of a bare ``music21.converter.parse(..., forceSource=True)`` of the same file.
-2. A synthetic score built in memory: analysed, tuned and written, from 1,000 notes up; seconds,
+2. Reading MusicXML alone: our reader against music21's parse of the same file, in one process.
+3. A synthetic score built in memory: analysed, tuned and written, from 1,000 notes up; seconds,
    growth against ten times fewer notes, and the peak of resident memory.
 
 Figures are medians; the two processes of a pair run in turn, so that both meet the same noise.
@@ -58,6 +59,29 @@ def against_bare_parse(rounds: int) -> dict[str, dict[str, float]]:
             bare.append(seconds_of([sys.executable, "-c", BARE, path]))
         mine, theirs = statistics.median(ours), statistics.median(bare)
         table[label] = {"retune": mine, "bare parse": theirs, "ratio": mine / theirs}
+    return table
+
+
+def reading(rounds: int) -> dict[str, dict[str, float]]:
+    """For each piece: median seconds of reading it with music21 and with ours, and their ratio."""
+    import music21
+
+    from retune.limits import Limits
+    from retune.score.musicxml import read_musicxml
+
+    table: dict[str, dict[str, float]] = {}
+    for label, name in PIECES.items():
+        path = Path(music21.__file__).parent / "corpus" / name
+        data, ours, theirs = path.read_bytes(), [], []
+        for _ in range(rounds):
+            start = time.perf_counter()
+            read_musicxml(data, Limits())
+            between = time.perf_counter()
+            music21.converter.parse(path, format="musicxml", forceSource=True, storePickle=False)
+            ours.append(between - start)
+            theirs.append(time.perf_counter() - between)
+        mine, other = statistics.median(ours), statistics.median(theirs)
+        table[label] = {"retune": mine, "music21": other, "ratio": other / mine}
     return table
 
 
@@ -134,7 +158,7 @@ def growth(sizes: list[int]) -> dict[str, dict[str, float]]:
 
 
 def main() -> None:
-    """Print both tables and keep them as JSON."""
+    """Print all tables and keep them as JSON."""
     parser = argparse.ArgumentParser(description=__doc__.splitlines()[0])
     parser.add_argument("--quick", action="store_true")
     parser.add_argument("--one", type=int, help=argparse.SUPPRESS)
@@ -146,6 +170,10 @@ def main() -> None:
     print(f"{'whole process':<16}{'retune s':>10}{'parse s':>10}{'ratio':>8}")
     for label, row in pairs.items():
         print(f"{label:<16}{row['retune']:>10.2f}{row['bare parse']:>10.2f}{row['ratio']:>8.2f}")
+    readers = reading(5 if wish.quick else 15)
+    print(f"\n{'reading alone':<16}{'retune s':>10}{'music21 s':>10}{'times':>8}")
+    for label, row in readers.items():
+        print(f"{label:<16}{row['retune']:>10.3f}{row['music21']:>10.3f}{row['ratio']:>8.1f}")
     sizes = [1_000, 10_000] if wish.quick else [1_000, 10_000, 100_000]
     table = growth(sizes)
     columns = ("analyse", "tune", "write", "all", "peak MiB")
@@ -157,7 +185,9 @@ def main() -> None:
         before = row["all"]
     if not wish.quick:
         RESULTS.parent.mkdir(exist_ok=True)
-        RESULTS.write_text(json.dumps({"process": pairs, "growth": table}, indent=1) + "\n")
+        RESULTS.write_text(
+            json.dumps({"process": pairs, "reading": readers, "growth": table}, indent=1) + "\n"
+        )
 
 
 if __name__ == "__main__":

@@ -4,8 +4,6 @@ from __future__ import annotations
 
 import subprocess
 import sys
-import time
-from dataclasses import replace
 from pathlib import Path
 
 import pytest
@@ -16,7 +14,6 @@ import corpus
 import roots
 
 from retune.harmony import analyse
-from retune.score.model import Bar, Note
 
 PIECES = {piece.name: piece for piece in corpus.development()}
 
@@ -51,19 +48,6 @@ def test_development_set(group: str, least: float) -> None:
     figures = tally_of(*(n for n, p in PIECES.items() if p.group == group)).figures()
     assert figures["supported"] >= least
     assert figures["quality"] >= 0.9
-
-
-@pytest.mark.slow
-def test_a_hundred_thousand_notes_in_fifteen_seconds() -> None:
-    score, _ = roots.read_piece(PIECES["R008"])
-    notes: list[Note] = []
-    bars: list[Bar] = []
-    for i in range(100_000 // len(score.notes)):
-        notes.extend(replace(note, onset=note.onset + i * score.end) for note in score.notes)
-        bars.extend(replace(bar, onset=bar.onset + i * score.end) for bar in score.bars)
-    started = time.process_time()
-    analyse(replace(score, notes=tuple(notes), bars=tuple(bars)))
-    assert time.process_time() - started < 15
 
 
 def test_import_brings_no_scipy() -> None:

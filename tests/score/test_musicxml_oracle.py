@@ -13,7 +13,6 @@ from collections.abc import Callable
 from dataclasses import dataclass, replace
 from fractions import Fraction
 from pathlib import Path
-from time import perf_counter
 
 import pytest
 from music21 import __file__ as music21_file
@@ -323,25 +322,3 @@ def test_a_sample_agrees_with_music21(name: str) -> None:
 @pytest.mark.parametrize("name", musicxml_files())
 def test_every_file_agrees_with_music21(name: str) -> None:
     check(name)
-
-
-@pytest.mark.slow
-def test_reading_is_three_times_as_fast_as_music21() -> None:
-    path = ROOT / "corpus/monteverdi/madrigal.5.8.mxl"
-    data = path.read_bytes()
-
-    def ours() -> None:
-        read_musicxml(data, Limits())
-
-    def theirs() -> None:
-        converter.parse(path, format="musicxml", forceSource=True, storePickle=False)
-
-    def seconds(action: Callable[[], None]) -> float:
-        times = []
-        for _ in range(5):
-            start = perf_counter()
-            action()
-            times.append(perf_counter() - start)
-        return min(times)
-
-    assert seconds(theirs) > 3 * seconds(ours)
