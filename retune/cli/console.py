@@ -43,7 +43,8 @@ def _to_stderr(text: str) -> None:
 def print_error(what: str, where: Place | None = None, hint: str = "") -> None:
     """An error: where it is, what it is, and on a line of its own what to do next."""
     place = f"{where}: " if where and str(where) else ""
-    _to_stderr(click.style("Error: ", fg="red", bold=True) + wrapped(place + what, "  "))
+    label = click.style("Error:", fg="red", bold=True)
+    _to_stderr(label + wrapped(f"Error: {place}{what}", "  ").removeprefix("Error:"))
     if hint:
         _to_stderr(wrapped(f"  {hint}.", "  "))
 
@@ -53,9 +54,10 @@ def print_findings(findings: Sequence[Finding], everything: bool = False) -> Non
     shown = [f for f in findings if everything or f.weight is not Weight.NOTE]
     limit = len(shown) if everything else MOST_FINDINGS
     for finding in shown[:limit]:
-        label = click.style(f"{finding.weight}: ", fg=_COLOURS[finding.weight])
+        label = f"  {finding.weight}:"
         where = f"{place}: " if (place := _inside(finding.where)) else ""
-        _to_stderr("  " + label + wrapped(where + finding.what, "    "))
+        text = wrapped(f"{label} {where}{finding.what}", "    ").removeprefix(label)
+        _to_stderr(click.style(label, fg=_COLOURS[finding.weight]) + text)
     hidden = len(findings) - min(len(shown), limit)
     if hidden:
         _to_stderr(f"  {hidden} more remark{'s' * (hidden > 1)} with --findings")
