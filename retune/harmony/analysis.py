@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from retune.harmony.chords import make_chords
+from retune.harmony.colour import add_tones
 from retune.harmony.evidence import gather_evidence
 from retune.harmony.model import Harmony
 from retune.harmony.nonchord import find_roles
@@ -38,9 +39,12 @@ def analyse_with(score: Score, weights: Weights, tonic: PitchClass | None = None
     timeline = make_timeline(score)
     evidence = gather_evidence(score, timeline)
     chords = make_chords(timeline, evidence, segment(evidence, weights))
+    tonic_found = find_tonic(score, evidence, chords, tonic)
+    fragments = find_roles(timeline, chords)
+    chords, fragments = add_tones(score, timeline.boundaries, chords, fragments)
     return Harmony(
         slices=make_slices(score, timeline),
         chords=chords,
-        fragments=find_roles(timeline, chords),
-        tonic=find_tonic(score, evidence, chords, tonic),
+        fragments=fragments,
+        tonic=tonic_found,
     )

@@ -35,12 +35,18 @@ class Quality(StrEnum):
 
 
 class Degree(StrEnum):
-    """Which member of its chord a chord tone is."""
+    """Which member of its chord a chord tone is: of its template, or a tone added to it."""
 
     ROOT = "root"
     THIRD = "third"
     FIFTH = "fifth"
     SEVENTH = "seventh"
+    SIXTH = "sixth"
+    NINTH = "ninth"
+    FOURTH = "fourth"
+    """In place of the third."""
+    SECOND = "second"
+    """In place of the third."""
 
 
 class Role(StrEnum):
@@ -68,7 +74,11 @@ class Slice:
 
 @dataclass(frozen=True, slots=True)
 class Chord:
-    """One chord: its time, root, quality, confidence (0 to 1) and the next likely reading."""
+    """One chord: its time, root, quality, confidence (0 to 1) and the next likely reading.
+
+    `added` are tones beyond the quality's own: a sixth, a ninth, or a fourth or second in place
+    of a third that never sounds.
+    """
 
     index: int
     onset: Fraction
@@ -79,6 +89,7 @@ class Chord:
     quality: Quality | None
     confidence: float
     runner_up: tuple[PitchClass, Quality] | None = None
+    added: tuple[Degree, ...] = ()
 
     @property
     def end(self) -> Fraction:

@@ -35,7 +35,7 @@ TONES: dict[Quality, tuple[int, ...]] = {
 """Semitones above the root, in the order of `DEGREES`."""
 
 QUALITIES: tuple[Quality, ...] = tuple(TONES)
-DEGREES: tuple[Degree, ...] = tuple(Degree)
+DEGREES: tuple[Degree, ...] = (Degree.ROOT, Degree.THIRD, Degree.FIFTH, Degree.SEVENTH)
 NON_CHORD = len(DEGREES)
 ROOTS = 12
 STATES = ROOTS * len(QUALITIES)

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from retune.harmony.model import Chord, Quality
+from retune.harmony.model import Chord, Degree, Quality
 from retune.pitch import PitchClass
 
 _SUFFIXES = {
@@ -18,6 +18,12 @@ _SUFFIXES = {
     Quality.MINOR_MAJOR_SEVENTH: "m(maj7)",
 }
 
+_NINTHS = {
+    Quality.DOMINANT_SEVENTH: "9",
+    Quality.MAJOR_SEVENTH: "maj9",
+    Quality.MINOR_SEVENTH: "m9",
+}
+
 
 def symbol_of(root: PitchClass, quality: Quality) -> str:
     """The symbol of a root and a quality.
@@ -29,10 +35,31 @@ def symbol_of(root: PitchClass, quality: Quality) -> str:
 
 
 def chord_symbol(chord: Chord) -> str:
-    """A chord's symbol, such as D, Dm or D7; empty where nothing sounds."""
+    """A chord's symbol, such as D, Dm7, D9 or Dsus4; empty where nothing sounds."""
     if chord.root is None or chord.quality is None:
         return ""
-    return symbol_of(chord.root, chord.quality)
+    return chord.root.name + _with_added(chord.quality, chord.added)
+
+
+def _with_added(quality: Quality, added: tuple[Degree, ...]) -> str:
+    """A suffix that tells the added tones, as they are usually written.
+
+    >>> [_with_added(Quality.DOMINANT_SEVENTH, (one,)) for one in (Degree.NINTH, Degree.FOURTH)]
+    ['9', '7sus4']
+    >>> _with_added(Quality.MINOR, (Degree.SIXTH, Degree.NINTH))
+    'm6/9'
+    """
+    suffix = _SUFFIXES[quality]
+    if Degree.FOURTH in added or Degree.SECOND in added:
+        seventh = "maj7" if "maj7" in suffix else "7" if "7" in suffix else ""
+        return seventh + "sus" + ("4" if Degree.FOURTH in added else "2")
+    if Degree.NINTH not in added:
+        return suffix + ("6" if Degree.SIXTH in added else "")
+    if Degree.SIXTH in added:
+        return f"{suffix}6/9"
+    if quality in _NINTHS:
+        return _NINTHS[quality]
+    return f"{suffix}add9"
 
 
 def chord_words(root: PitchClass, quality: Quality) -> str:

@@ -15,7 +15,7 @@ import numpy as np
 from retune.harmony.model import Degree, Harmony
 from retune.score.model import Score
 from retune.tuning.intervals import CONSONANT, consonances, nearest
-from retune.tuning.ratios import AUGMENTED_SIXTH, Template, templates
+from retune.tuning.ratios import AUGMENTED_SIXTH, Template, templates, with_added
 
 Options = list[tuple[Template, ...]]
 """The alternatives of each chord."""
@@ -58,14 +58,19 @@ def wolves(template: Template, degrees: frozenset[int], limit: int) -> float:
 
 def is_exception(template: Template, first: Template) -> bool:
     """Whether a dominant seventh is not 4:5:6:7 where that is preferred."""
-    return template.semitones == _DOMINANT and template.limit < 7 <= first.limit
+    return template.semitones[:4] == _DOMINANT and template.limit < 7 <= first.limit
 
 
 def options_of(score: Score, harmony: Harmony, limit: int) -> Options:
     """The templates each chord may take, the preferred one first; none where nothing sounds."""
     sixths = sixth_chords(score, harmony)
     return [
-        templates(chord.quality, limit, chord.index in sixths) if chord.quality else ()
+        tuple(
+            with_added(one, chord.added, limit)
+            for one in templates(chord.quality, limit, chord.index in sixths)
+        )
+        if chord.quality
+        else ()
         for chord in harmony.chords
     ]
 

@@ -20,7 +20,7 @@ from retune.tuning.alternatives import Options, is_exception, wolves
 from retune.tuning.intervals import Flags, Floats, Ints, steps
 from retune.tuning.layout import Layout
 from retune.tuning.policies import Weights
-from retune.tuning.ratios import Template
+from retune.tuning.ratios import DEGREES, Template
 from retune.tuning.rows import CHOIR, held_weights, melodic_weights
 
 _GRID, _STEP = 46, 2.0
@@ -38,7 +38,7 @@ _EXCEPTION = 20_000.0
 """Cost of a dominant seventh or augmented sixth that is not 4:5:6:7 though limit 7 is in force:
 less than a held note that would move by 27 cents, more than several repeated ones."""
 _LINKS_AT_ONCE = 20_000
-_DEGREES = 5  # four degrees, and one that stands for none
+_DEGREES = len(DEGREES) + 1  # the last one stands for none
 
 
 Cost = Callable[[Floats, Floats, Ints], Floats]

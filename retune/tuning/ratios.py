@@ -23,7 +23,16 @@ from math import ceil, floor
 from retune.harmony.model import Degree, Quality
 from retune.units import largest_prime, octave_reduced, ratio_to_cents
 
-DEGREES = (Degree.ROOT, Degree.THIRD, Degree.FIFTH, Degree.SEVENTH)
+DEGREES = tuple(Degree)
+"""Order of the tones in a template: root, third, fifth, seventh, then the added ones."""
+
+_ADDED = {
+    Degree.SIXTH: (3, Fraction(5, 3)),
+    Degree.NINTH: (2, Fraction(9, 8)),
+    Degree.FOURTH: (-1, Fraction(4, 3)),
+    Degree.SECOND: (2, Fraction(9, 8)),
+}
+"""Added tones: place on the line of fifths above the root, and ratio."""
 
 AUGMENTED_SIXTH = 10
 """Place of the augmented sixth on the line of fifths."""
@@ -157,6 +166,25 @@ def templates(quality: Quality, limit: int, augmented_sixth: bool = False) -> tu
         _template(spelled, (Fraction(1), *map(Fraction, text.split())) if text else None)
         for text in (_SIXTHS[limit] if sixth else table[quality])
     )
+
+
+@cache
+def with_added(template: Template, added: tuple[Degree, ...], limit: int) -> Template:
+    """A template with tones added, each in the place that `DEGREES` gives it.
+
+    A sixth is 5/3 (within limit 3: 27/16), a ninth or second 9/8, a fourth 4/3: the chords
+    12:15:18:20, 4:5:6:9, 6:8:9 and 8:9:12. Places that stay empty hold the root.
+    """
+    if not added:
+        return template
+    size = len(template.spelled)
+    places = [*template.spelled, *[0] * (len(DEGREES) - size)]
+    ratios = [*(template.ratios or ()), *[Fraction(1)] * (len(DEGREES) - size)]
+    for degree in added:
+        index = DEGREES.index(degree)
+        places[index], ratio = _ADDED[degree]
+        ratios[index] = power(places[index], 0) if limit == 3 else ratio
+    return _template(tuple(places), tuple(ratios) if template.ratios is not None else None)
 
 
 _LOWEST, _HIGHEST = -8, 11

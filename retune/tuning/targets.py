@@ -17,7 +17,7 @@ from retune.harmony.model import Harmony, Quality
 from retune.pitch import PitchClass
 from retune.tuning.intervals import Flags, Floats
 from retune.tuning.layout import Layout
-from retune.tuning.ratios import Template, scale_cents
+from retune.tuning.ratios import DEGREES, Template, scale_cents
 
 _TRIADS = (Quality.MAJOR, Quality.MINOR)
 
@@ -76,7 +76,7 @@ def aim(
     limit : int
         The prime limit in force.
     """
-    cents = np.zeros((len(harmony.chords), 5))
+    cents = np.zeros((len(harmony.chords), len(DEGREES) + 1))
     for index, template in enumerate(templates):
         if template is not None:
             cents[index, : len(template.cents)] = template.cents
@@ -85,7 +85,9 @@ def aim(
     spread = {fifths: scale_cents(fifths, limit) for fifths in range(-60, 61)}
     own = np.array([spread[int(f)] for f in np.clip(layout.fifths - tonic.fifths, -60, 60)])
     roots = _chord_places(layout, harmony, just, own, tone)
-    triad = np.array([chord.quality in _TRIADS for chord in harmony.chords], dtype=bool)
+    triad = np.array(
+        [chord.quality in _TRIADS and not chord.added for chord in harmony.chords], dtype=bool
+    )
     home = np.array([chord.root == tonic for chord in harmony.chords], dtype=bool)
     return Targets(
         templates=templates,

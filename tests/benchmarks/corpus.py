@@ -34,8 +34,9 @@ LEADING_NUMBER = re.compile(r"\d+")
 QUALITY_OF_TONES = {frozenset(tones): quality for quality, tones in TONES.items()}
 TRANSPOSED = {14: 5, 17: -2}
 """Semitones from the score in the corpus to the analysis, by Riemenschneider number."""
-UNALIGNED = frozenset({11})
-"""BWV 41.6, whose score has trumpets and other bars than the analysis."""
+UNALIGNED = frozenset({11, 15})
+"""BWV 41.6, whose score has trumpets and other bars than the analysis, and BWV 277, whose score
+writes out the repeat that the analysis leaves folded."""
 
 
 @dataclass(frozen=True)
