@@ -12,6 +12,7 @@ from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, field, replace
 from fractions import Fraction
 
+from retune.errors import LimitError
 from retune.pitch import Pitch, PitchClass
 from retune.written import (
     Mark,
@@ -22,6 +23,17 @@ from retune.written import (
     WrittenNote,
     WrittenRest,
 )
+
+MOST_BARS = 100_000
+"""So many bars in one voice are taken for a damaged file."""
+
+# A bar longer than so many full ones is a stretch without bar lines.
+_STRETCH = 2
+
+
+def too_many_bars() -> LimitError:
+    """The error for more than `MOST_BARS`."""
+    return LimitError(f"the tune has more than {MOST_BARS} bars")
 
 
 @dataclass
@@ -63,15 +75,24 @@ def bar_length(metre: tuple[int, int]) -> Fraction:
 
 
 def in_bars(bars: Sequence[BarDraft]) -> list[BarDraft]:
-    """The bars that hold anything; one long stretch without bar lines is cut up by its metre."""
-    filled = [bar for bar in bars if bar.events]
-    if len(filled) != 1 or filled[0].metre is None:
-        return filled
-    length = bar_length(filled[0].metre)
-    return _cut(filled[0], length) if filled[0].length > length else filled
+    """The bars that hold anything; long stretches without bar lines are cut up by the metre.
+
+    Raises `LimitError` for more than `MOST_BARS`.
+    """
+    cut: list[BarDraft] = []
+    metre: tuple[int, int] | None = None
+    for bar in bars:
+        metre = bar.metre or metre
+        if metre and bar.length > _STRETCH * bar_length(metre):
+            cut.extend(_cut(bar, bar_length(metre)))
+        elif bar.events:
+            cut.append(bar)
+    return cut
 
 
 def _cut(bar: BarDraft, length: Fraction) -> list[BarDraft]:
+    if bar.length > MOST_BARS * length:
+        raise too_many_bars()
     cut = [replace(bar, events=[], marks=[], repeat_end=0, ending_stop=False)]
     marks = sorted(bar.marks, key=lambda mark: mark[0])
     for place, event in enumerate(bar.events):
@@ -86,6 +107,7 @@ def _cut(bar: BarDraft, length: Fraction) -> list[BarDraft]:
             cut[-1].events.append(head)
             cut.append(BarDraft())
         cut[-1].events.append(left)
+    cut[-1].marks += [(len(cut[-1].events), kind, value) for _, kind, value in marks]
     cut[-1].repeat_end, cut[-1].ending_stop = bar.repeat_end, bar.ending_stop
     return cut
 
@@ -157,9 +179,9 @@ def _numbers(bars: Sequence[BarDraft]) -> Iterator[tuple[str, bool]]:
         continues = bool(place) and bar.length == room
         if place == 0 and bar.length < full:
             yield "0", True
-        else:
-            number += not continues
-            yield str(number), continues
+            continue
+        number += not continues
+        yield str(number), continues
         room = full - bar.length if bar.length < full and not continues else Fraction(0)
 
 

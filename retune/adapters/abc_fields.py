@@ -36,8 +36,10 @@ _FRACTION = re.compile(r"(\d{1,4})/(\d{1,4})")
 _TEMPO = re.compile(r"((?:\d{1,4}/\d{1,4}\s*)+)=\s*(\d{1,4}(?:\.\d{1,4})?)")
 _NAMED_CLEFS = {"treble": "G", "bass": "F", "tenor": "C", "alto": "C"}
 _CLEF = re.compile(
-    r"(clef\s*=\s*)?\b(treble|bass|tenor|alto|[GFC])[1-5]?([+-]?8)?(?![A-Za-z])", re.IGNORECASE
+    r"(?P<modern>clef\s*=\s*)?\b(?P<name>treble|bass|tenor|alto)[1-5]?(?P<octave>[+-]?8)?(?![A-Za-z])"
 )
+_CLEF_LETTER = re.compile(r"(?P<modern>clef\s*=\s*)(?P<name>[GFC])[1-5]?(?P<octave>[+-]?8)?\b")
+_QUOTED = re.compile(r'"[^"]*"')
 _OCTAVES = {"8": -12, "-8": -12, "+8": 12}
 
 
@@ -139,10 +141,11 @@ def parse_staff(text: str) -> Staff:
     shift += sum(12 * int(n) for n in re.findall(r"\boctave\s*=\s*(-?\d)\b", text))
     if "-8va" in text:
         return Staff("G8", shift - 12)
-    match = _CLEF.search(_TONIC.sub("", text, count=1))
+    bare = _QUOTED.sub("", text)
+    match = _CLEF_LETTER.search(bare) or _CLEF.search(bare)
     if match is None:
         return Staff("", shift)
-    sign = _NAMED_CLEFS.get(match[2].lower(), match[2].upper())
-    octave = _OCTAVES.get(match[3] or "", 0)
+    sign = _NAMED_CLEFS.get(match["name"], match["name"])
+    octave = _OCTAVES.get(match["octave"] or "", 0)
     clef = "G8" if sign == "G" and octave == -12 else sign
-    return Staff(clef, shift + octave, match[2].lower() == "bass" and not match[1])
+    return Staff(clef, shift + octave, match["name"] == "bass" and not match["modern"])

@@ -10,11 +10,13 @@ Conventions
 from __future__ import annotations
 
 import re
+from collections import defaultdict
 from collections.abc import Callable
+from dataclasses import replace
 from fractions import Fraction
 
 from retune.adapters import abc_tokens as tokens
-from retune.adapters.abc_drafts import BarDraft, Event
+from retune.adapters.abc_drafts import MOST_BARS, BarDraft, Event, too_many_bars
 from retune.adapters.abc_fields import (
     ALTERS,
     AbcKey,
@@ -27,6 +29,7 @@ from retune.pitch import Pitch
 from retune.written import MarkKind, MarkValue, WrittenLyric
 
 _MOST_BARS_REST = 1000
+_GOES_ON = {"single": "begin", "end": "middle"}
 _BAR = re.compile(r"(?P<ends>:*)(?P<line>[\[|\]]*?)(?P<starts>:*)\s*\[?(?P<ending>[1-9][\d,-]*)?")
 
 
@@ -58,6 +61,7 @@ class VoiceReader:
         self._tuplet = (Fraction(1), 0)
         self._in_ending = False
         self._skipping = False
+        self._inside: defaultdict[int, bool] = defaultdict(bool)
         self._line: list[tuple[int, Event]] = []
         self.lost: set[str] = set()
 
@@ -97,7 +101,8 @@ class VoiceReader:
         """Put a w: line under the last line of music; False if syllables are left over."""
         if not self._line:
             return False
-        inside, place, bar = False, 0, self._line[0][0]
+        place, bar = 0, self._line[0][0]
+        last: list[WrittenLyric] = []
         for sign in tokens.syllables_of(line):
             if sign == "|":
                 bar += 1
@@ -108,12 +113,15 @@ class VoiceReader:
                 return sign in ("-", "_", "*")
             event = self._line[place][1]
             place += 1
+            if sign == "-" and last and not self._inside[verse]:  # "wa - ter": still one word
+                last[-1] = replace(last[-1], syllabic=_GOES_ON[last[-1].syllabic])
+                self._inside[verse] = True
             if sign in ("-", "_", "*"):
                 continue
             goes_on = sign.endswith("-")
-            syllabic = (("single", "begin"), ("end", "middle"))[inside][goes_on]
+            syllabic = (("single", "begin"), ("end", "middle"))[self._inside[verse]][goes_on]
             event.lyrics.append(WrittenLyric(sign.removesuffix("-"), syllabic, str(verse)))
-            inside = goes_on
+            self._inside[verse], last = goes_on, event.lyrics
         return True
 
     # --- signs -------------------------------------------------------------------------
@@ -274,6 +282,8 @@ class VoiceReader:
             self._in_ending = bool(self._bar.ending)
 
     def _next_bar(self) -> None:
+        if len(self.bars) >= MOST_BARS:
+            raise too_many_bars()
         self.bars.append(BarDraft())
         self._alters = {}
 

@@ -11,8 +11,9 @@ from collections.abc import Sequence
 
 from retune.adapters.abc import read_pieces
 from retune.adapters.humdrum import add_names_and_lyrics
+from retune.adapters.mei import add_title_signs_and_tempi
 from retune.adapters.music21_parsing import guarded, parse, written
-from retune.adapters.xml import read_document
+from retune.adapters.xml import Element, read_document
 from retune.errors import LimitError, RetuneError, UnreadableError
 from retune.limits import Limits
 from retune.written import WrittenScore
@@ -54,10 +55,13 @@ def read_notation(
     limits = limits or Limits()
     if len(data) > limits.max_bytes:
         raise LimitError(f"the file has {len(data)} bytes; at most {limits.max_bytes} are read")
-    if format in _XML:
-        read_document(data, limits)  # refuses what could do harm
+    # Reading the XML here too refuses what could do harm.
+    root = read_document(data, limits).root if format in _XML else None
     text = _decoded(data, format)
-    score = _read_abc(text, piece) if format == "abc" else _read_by_music21(text, format, piece)
+    if format == "abc":
+        score = _read_abc(text, piece)
+    else:
+        score = _read_by_music21(text, format, piece, root)
     if not any(bar.notes for part in score.parts for bar in part.bars):
         raise UnreadableError(
             f"no notes were found in the {FORMATS[format]} file",
@@ -76,17 +80,21 @@ def _decoded(data: bytes, format: str) -> str:
         try:
             if encoding:
                 return data.decode(encoding)
-        except (UnicodeDecodeError, LookupError):
+        except (UnicodeError, LookupError):
             continue
     return data.decode("latin-1")
 
 
-def _read_by_music21(text: str, format: str, piece: int | None) -> WrittenScore:
+def _read_by_music21(
+    text: str, format: str, piece: int | None, root: Element | None
+) -> WrittenScore:
     with guarded(FORMATS[format]) as said:
         scores = parse(text, format)
         score = scores[_chosen([_title(one) for one in scores], piece)]
         if format == "humdrum" and len(scores) == 1:
             add_names_and_lyrics(text, score)
+        if format == "mei" and root is not None:
+            add_title_signs_and_tempi(root, score)
         result = written(score, format)
     return said.told(result)
 

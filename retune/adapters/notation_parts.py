@@ -43,8 +43,7 @@ class _Contents:
 class PartReader:
     """Reads one music21 part that has measures.
 
-    `number` makes the sources of its notes unique in the score. After `read`, `sources` tells
-    which noteheads a music21 note or chord became, by its `id()`.
+    `number` makes the sources of its notes unique in the score.
     """
 
     def __init__(self, part: Any, number: int) -> None:
@@ -52,11 +51,10 @@ class PartReader:
         self._number = number
         self._heads = 0
         self._where: dict[int, tuple[int, Fraction, Fraction]] = {}
-        self.sources: dict[int, tuple[str, ...]] = {}
 
     def read(self) -> WrittenPart:
         """The part with all its bars."""
-        measures = list(self._part.getElementsByClass("Measure"))
+        measures = _measures(self._part)
         contents = [self._contents(measure, index) for index, measure in enumerate(measures)]
         for index, mark in self._hairpins():
             contents[index].marks.append(mark)
@@ -71,8 +69,10 @@ class PartReader:
             clefs=_first_clef(self._part),
             unpitched=sum(found.unpitched for found in contents),
             bars=tuple(
-                _bar(measure, found, opens.get(index, ()), index in closes)
-                for index, (measure, found) in enumerate(zip(measures, contents, strict=True))
+                _bar(measure, number, found, opens.get(index, ()), index in closes)
+                for index, (measure, number, found) in enumerate(
+                    zip(measures, _numbers(measures), contents, strict=True)
+                )
             ),
         )
 
@@ -98,10 +98,8 @@ class PartReader:
             return
         heads = [head for head in _heads(element) if hasattr(head, "pitch")]
         found.unpitched += len(_heads(element)) - len(heads)
-        sources = []
         for place, head in enumerate(heads):
             self._heads += 1
-            sources.append(f"{self._number}.{self._heads}")
             tie = "" if head.tie is None else head.tie.type
             found.notes.append(
                 WrittenNote(
@@ -114,10 +112,9 @@ class PartReader:
                     grace=bool(element.duration.isGrace),
                     lyrics=() if place else tuple(_lyrics(element)),
                     marks=note_marks(element),
-                    source=sources[-1],
+                    source=f"{self._number}.{self._heads}",
                 )
             )
-        self.sources[id(element)] = tuple(sources)
 
     def _hairpins(self) -> Iterator[tuple[int, Mark]]:
         """The ends of hairpins, each with the bar it stands in."""
@@ -129,6 +126,14 @@ class PartReader:
             kind = "crescendo" if "Crescendo" in spanner.classes else "diminuendo"
             yield first[0], Mark(MarkKind.HAIRPIN, first[1], kind)
             yield last[0], Mark(MarkKind.HAIRPIN, last[1] + last[2], "stop")
+
+
+def _measures(part: Any) -> list[Any]:
+    """The measures of a part, without an empty one that a last repeat sign leaves behind."""
+    measures = list(part.getElementsByClass("Measure"))
+    while len(measures) > 1 and not measures[-1]["GeneralNote"]:
+        measures.pop()
+    return measures
 
 
 def _elements(measure: Any) -> Iterator[tuple[Any, Fraction, str]]:
@@ -160,6 +165,8 @@ def _lyrics(element: Any) -> Iterator[WrittenLyric]:
         text = _text(lyric.text)
         if text:
             syllabic = lyric.syllabic if lyric.syllabic in _SYLLABICS else "single"
+            if syllabic in ("begin", "middle"):
+                text = text.removesuffix("-") or text
             yield WrittenLyric(text, syllabic, str(lyric.identifier or lyric.number))
 
 
@@ -167,17 +174,28 @@ def _text(value: object) -> str:
     return " ".join(str(value).split()) if value else ""
 
 
-def _bar(measure: Any, found: _Contents, ending: tuple[int, ...], ending_stop: bool) -> WrittenBar:
+def _numbers(measures: Sequence[Any]) -> Iterator[str]:
+    """Bar numbers; a bar without one goes on with the number before it."""
+    number = "0"
+    for measure in measures:
+        if measure.number:
+            number = f"{measure.number}{measure.numberSuffix or ''}"
+        yield number
+
+
+def _bar(
+    measure: Any, number: str, found: _Contents, ending: tuple[int, ...], ending_stop: bool
+) -> WrittenBar:
     length = found.reach or Fraction(measure.barDuration.quarterLength)
     metre = measure["TimeSignature"].first()
     left, right = measure.leftBarline, measure.rightBarline
     return WrittenBar(
-        number=f"{measure.number}{measure.numberSuffix or ''}",
+        number=number,
         length=length,
         notes=tuple(found.notes),
         rests=tuple(found.rests),
         marks=(*found.marks, *bar_line_marks(measure, length)),
-        implicit=measure.number == 0,
+        implicit=not measure.number,
         metre=(metre.numerator, metre.denominator) if metre is not None else None,
         key=_key(measure),
         repeat_start=getattr(left, "direction", "") == "start",

@@ -180,3 +180,37 @@ def test_limits_hold() -> None:
         read_notation(ABC.encode(), "abc", limits=Limits(max_notes=3))
     with pytest.raises(LimitError):
         read_notation(ABC.encode(), "abc", limits=Limits(max_bytes=10))
+
+
+def test_mei_signs_that_music21_leaves_out() -> None:
+    text = MEI.replace('meter.unit="4">', 'meter.unit="4" midi.bpm="66">').replace(
+        '<note pname="c"', '<note xml:id="a" fermata="above" pname="c"'
+    )
+    text = text.replace('pname="f"', 'xml:id="b" pname="f"').replace(
+        "</staff></measure>",
+        '</staff><tempo tstamp="3" midi.bpm="80"/><fermata startid="#b"/></measure>',
+    )
+    (bar,) = read_notation(text.encode(), "mei").parts[0].bars
+    assert [note.marks for note in bar.notes] == [{"fermata"}, {"fermata"}]
+    tempi = [(m.onset, m.value) for m in bar.marks if m.kind is MarkKind.TEMPO]
+    assert tempi == [(0, 66), (2, 80)]
+
+
+def test_a_divided_bar_of_humdrum_keeps_its_number() -> None:
+    score = read_notation((CORPUS / "bach/bwv277.krn").read_bytes(), "humdrum")
+    bars = score.parts[0].bars
+    assert [(bar.number, bar.implicit, bar.length) for bar in bars[:1] + bars[4:6]] == [
+        ("0", True, 1),
+        ("4", False, 3),
+        ("4", True, 1),
+    ]
+    assert (bars[4].repeat_end, bars[-1].number) == (2, "12")
+
+
+@pytest.mark.slow
+def test_every_humdrum_file_of_the_corpus_reads() -> None:
+    files = sorted((CORPUS / "palestrina").glob("*.krn"))
+    assert len(files) > 1300
+    for path in files:
+        score = read_notation(path.read_bytes(), "humdrum")
+        assert len({sum(bar.length for bar in part.bars) for part in score.parts}) == 1, path.name
