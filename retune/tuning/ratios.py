@@ -72,6 +72,13 @@ class Template:
     cents: tuple[float, ...]
 
     @property
+    def septimal(self) -> tuple[bool, ...]:
+        """Whether each degree's ratio holds the prime 7."""
+        if self.ratios is None:
+            return (False,) * len(self.spelled)
+        return tuple(largest_prime(ratio) == 7 for ratio in self.ratios)
+
+    @property
     def limit(self) -> int:
         """The largest prime in its ratios; 1 for a tempered chord."""
         return max((largest_prime(ratio) for ratio in self.ratios or ()), default=1)

@@ -80,7 +80,9 @@ def chord_rows(
         full = np.where(consonant, 1.0, weights.dissonant) * np.where(
             targets.triad[left] & consonant, weights.triad, 1.0
         )
-        part = np.where(consonant, weights.other, weights.clash)
+        # A stranger is no pure third from a natural seventh: 7/4 and 9/8 are 9/7 apart.
+        natural = targets.septimal[left] | targets.septimal[right]
+        part = np.where(consonant, np.where(natural, 0.0, weights.other), weights.clash)
         weight = np.where(tones, full, np.where(unison, 1.0, part))
         target = np.where(unison, 0.0, np.where(tones, drawn, other))
         yield left, right, weights.chord * quarters * weight, target

@@ -34,6 +34,8 @@ class Targets:
     just, place : ndarray, shape (pieces,)
     tone : ndarray of bool, shape (pieces,)
         Chord tones that sound with something else.
+    septimal : ndarray of bool, shape (pieces,)
+        Chord tones whose ratio holds the prime 7.
     triad, home : ndarray of bool, shape (pieces,)
         Whether the piece's chord is a major or minor triad; whether its root is the home tonic.
     """
@@ -43,6 +45,7 @@ class Targets:
     just: Floats
     place: Floats
     tone: Flags
+    septimal: Flags
     triad: Flags
     home: Flags
 
@@ -77,9 +80,11 @@ def aim(
         The prime limit in force.
     """
     cents = np.zeros((len(harmony.chords), len(DEGREES) + 1))
+    septimal = np.zeros(cents.shape, dtype=bool)
     for index, template in enumerate(templates):
         if template is not None:
             cents[index, : len(template.cents)] = template.cents
+            septimal[index, : len(template.cents)] = template.septimal
     just = cents[layout.chord, layout.degree]
     tone = (layout.degree >= 0) & ~layout.lone
     spread = {fifths: scale_cents(fifths, limit) for fifths in range(-60, 61)}
@@ -95,6 +100,7 @@ def aim(
         just=np.where(tone, just, 0.0),
         place=np.where(tone, just + roots[layout.chord], own),
         tone=tone,
+        septimal=tone & septimal[layout.chord, layout.degree],
         triad=triad[layout.chord],
         home=home[layout.chord],
     )
