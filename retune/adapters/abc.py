@@ -1,7 +1,8 @@
 """ABC files (standard 2.1) as written scores.
 
 Some files hold the parts of one piece as tunes of one voice each, one after another under one
-title. They are joined where they are equally long or where second titles name the parts.
+title. They are joined where second titles name the parts, or where they are equally long and
+differ in clef. Variants of a tune, which share title and length too, stay apart.
 """
 
 from __future__ import annotations
@@ -17,6 +18,12 @@ from retune.errors import Finding, Weight
 from retune.written import MarkKind, WrittenBar, WrittenPart, WrittenScore
 
 _TUNE = re.compile(r"^X:", re.MULTILINE)
+# What a part's own title begins with; "contra" takes in contratenor, "quint" the quinta pars.
+_PART_NAME = re.compile(
+    r"\s*(soprano|superius|supremus|cantus|discantus|treble|mezzo|alt|contra|tenor|bariton|bass|"
+    r"basis|quint|sext|sept|oct|vagans|tiple|triplum|motetus|voice|vox|part)",
+    re.IGNORECASE,
+)
 _SHARED_FIELD = re.compile(r"[MLQUC]:")
 
 
@@ -95,6 +102,7 @@ def _are_parts(tunes: Sequence[Tune]) -> bool:
     """Whether tunes of one title are the parts of one piece."""
     if len(tunes) < 2 or not tunes[0].title or any(len(tune.voices) > 1 for tune in tunes):
         return False
-    names = {tune.titles[1].casefold() for tune in tunes[1:] if len(tune.titles) > 1}
+    named = all(any(map(_PART_NAME.match, tune.titles[1:])) for tune in tunes[1:])
     lengths = {tune.voices[0].length for tune in tunes}
-    return len(lengths) == 1 or len(names) == len(tunes) - 1
+    clefs = {tune.voices[0].staff.clef for tune in tunes}
+    return named or (len(lengths) == 1 and len(clefs) > 1)

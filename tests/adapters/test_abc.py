@@ -207,6 +207,32 @@ def test_left_over_syllables_are_told() -> None:
     assert any("more syllables than notes" in finding.what for finding in score.findings)
 
 
+# --- pieces -----------------------------------------------------------------------------------
+
+
+def several(*tunes: str) -> bytes:
+    head = "X:{}\nT:Two Boats\n{}\nM:4/4\nL:1/4\nK:C{}\n{}\n"
+    return "\n".join(
+        head.format(number, *one.split("|", 2)) for number, one in enumerate(tunes, start=1)
+    ).encode()
+
+
+def test_tunes_named_as_parts_are_one_piece() -> None:
+    score = read_notation(several("T:Cantus||cdef|]", "T:Bassus| clef=bass|C,4 C,4|]"), "abc")
+    assert [part.name for part in score.parts] == ["Cantus", "Bassus"]
+    assert any("2 tunes of one title" in finding.what for finding in score.findings)
+
+
+def test_tunes_of_one_length_in_two_clefs_are_one_piece() -> None:
+    score = read_notation(several("N:||cdef|]", "N:| clef=bass|C,4|]"), "abc")
+    assert len(score.parts) == 2
+
+
+def test_variants_of_a_tune_stay_apart() -> None:
+    with pytest.raises(RetuneError, match="2 pieces"):
+        read_notation(several("N:||cdef|]", "N:||cdfe|]"), "abc")
+
+
 # --- limits -----------------------------------------------------------------------------------
 
 
