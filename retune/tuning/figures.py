@@ -94,7 +94,8 @@ def purity(layout: Layout, targets: Targets, x: Floats, limit: int) -> dict[str,
         cents = x[right] - x[left]
         missed = np.abs(cents - nearest(table, apart, cents))
         level = np.abs(nearest(table, apart, np.zeros(len(apart))))
-        inside = targets.tone[left] & targets.tone[right] & targets.triad[left]
+        both = targets.triad[left] & targets.triad[right]
+        inside = targets.tone[left] & targets.tone[right] & both
         for every, triad, values in ((pairs, triads, missed), (equal, equal_triads, level)):
             every.add(values, weight)
             triad.add(values[inside], weight[inside])

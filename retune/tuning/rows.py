@@ -78,7 +78,7 @@ def chord_rows(
         drawn = np.where(wolf, weights.pure_share * pure + (1 - weights.pure_share) * just, just)
         other = np.where(consonant, pure, nearest_directed(steps(limit), distance, placed))
         full = np.where(consonant, 1.0, weights.dissonant) * np.where(
-            targets.triad[left] & consonant, weights.triad, 1.0
+            targets.triad[left] & targets.triad[right] & consonant, weights.triad, 1.0
         )
         # A stranger is no pure third from a natural seventh: 7/4 and 9/8 are 9/7 apart.
         natural = targets.septimal[left] | targets.septimal[right]

@@ -19,6 +19,7 @@ from retune.tuning.intervals import Flags, Floats
 from retune.tuning.layout import Layout
 from retune.tuning.ratios import DEGREES, Template, scale_cents
 
+TRIAD_TONES = 3
 _TRIADS = (Quality.MAJOR, Quality.MINOR)
 
 
@@ -37,7 +38,8 @@ class Targets:
     septimal : ndarray of bool, shape (pieces,)
         Chord tones whose ratio holds the prime 7.
     triad, home : ndarray of bool, shape (pieces,)
-        Whether the piece's chord is a major or minor triad; whether its root is the home tonic.
+        Whether the piece's chord is a major or minor triad and the piece is no tone added to it;
+        whether its root is the home tonic.
     """
 
     templates: tuple[Template | None, ...]
@@ -90,9 +92,7 @@ def aim(
     spread = {fifths: scale_cents(fifths, limit) for fifths in range(-60, 61)}
     own = np.array([spread[int(f)] for f in np.clip(layout.fifths - tonic.fifths, -60, 60)])
     roots = _chord_places(layout, harmony, just, own, tone)
-    triad = np.array(
-        [chord.quality in _TRIADS and not chord.added for chord in harmony.chords], dtype=bool
-    )
+    triad = np.array([chord.quality in _TRIADS for chord in harmony.chords], dtype=bool)
     home = np.array([chord.root == tonic for chord in harmony.chords], dtype=bool)
     return Targets(
         templates=templates,
@@ -101,6 +101,6 @@ def aim(
         place=np.where(tone, just + roots[layout.chord], own),
         tone=tone,
         septimal=tone & septimal[layout.chord, layout.degree],
-        triad=triad[layout.chord],
+        triad=triad[layout.chord] & (layout.degree < TRIAD_TONES),
         home=home[layout.chord],
     )

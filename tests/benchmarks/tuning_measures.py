@@ -19,7 +19,7 @@ from dataclasses import dataclass
 from fractions import Fraction
 from itertools import combinations, pairwise
 
-from retune.harmony.model import Harmony, Quality
+from retune.harmony.model import Degree, Harmony, Quality
 from retune.score.model import Score
 
 Pitching = list[list[tuple[Fraction, Fraction, float]]]
@@ -165,11 +165,14 @@ def _pitch_at(pitching: Pitching, score: Score, harmony: Harmony) -> list[dict[i
     return found
 
 
+_OWN = (Degree.ROOT, Degree.THIRD, Degree.FIFTH, Degree.SEVENTH)
+
+
 def _chord_tones(harmony: Harmony) -> list[dict[int, int]]:
-    """By chord: the notes that are its tones, with nothing but the fact."""
+    """By chord: the notes that are its own tones, none added, with nothing but the fact."""
     found: list[dict[int, int]] = [{} for _ in harmony.chords]
     for fragment in harmony.fragments:
-        if fragment.degree is not None:
+        if fragment.degree in _OWN:
             found[fragment.chord][fragment.note] = 1
     return found
 

@@ -75,7 +75,7 @@ def chained(score: Score, harmony: Harmony) -> Pitching:
     tones: list[dict[int, float]] = [{} for _ in harmony.chords]
     for fragment in harmony.fragments:
         chord = harmony.chords[fragment.chord]
-        if fragment.degree is not None and chord.quality is not None:
+        if fragment.degree in _NUMBER and chord.quality is not None:
             ratio = _TEMPLATES[chord.quality].split()[_NUMBER[fragment.degree]]
             tones[fragment.chord][fragment.note] = _off(ratio)
     plain = {steps: _off(text) for steps, text in enumerate(_SCALE)}
