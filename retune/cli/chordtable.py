@@ -20,7 +20,7 @@ from retune.score.model import Part
 from retune.tuning.model import Segment, TunedNote, TunedScore
 
 DOUBTFUL = 0.6
-"""Confidence below which a root is marked with a question mark (our choice)."""
+"""Confidence up to which a root is marked with a question mark (our choice)."""
 
 _BAR, _BEAT, _CHORD = 5, 6, 8
 _NUMBER = 3
@@ -127,7 +127,7 @@ def _heading(tuned: TunedScore, parts: Sequence[int], layout: Layout, first: boo
 def symbol_of(chord: Chord) -> str:
     """The chord's symbol, with a question mark where its root is doubtful."""
     symbol = chord_symbol(chord)
-    return f"{symbol}?" if symbol and chord.confidence < DOUBTFUL else symbol
+    return f"{symbol}?" if symbol and chord.confidence <= DOUBTFUL else symbol
 
 
 def table(tuned: TunedScore, columns: int, wanted: range | None = None) -> Iterator[str]:
@@ -148,7 +148,7 @@ def table(tuned: TunedScore, columns: int, wanted: range | None = None) -> Itera
         if bar.run != shown_run:
             shown_run = bar.run
             yield click.style(f" time {bar.run} through", dim=True)
-        doubts |= chord.confidence < DOUBTFUL
+        doubts |= chord.confidence <= DOUBTFUL
         others |= any(segment.role is not Role.CHORD_TONE for _, segment in row.values())
         beat = score.beat_at(chord.onset)
         left = f" {bar.number:<{_BAR}}{beat_text(beat):<{_BEAT}}"
