@@ -10,7 +10,7 @@
 ``RetuneError``         what every function raises: what, where, what to do next
 ======================  ==========================================================
 
-A session::
+For example::
 
     import retune
 

@@ -67,7 +67,7 @@ class Policy:
     prime_limit : int
         3, 5 or 7: the largest prime in any ratio used.
     drift : Drift
-        See the handbook of policies in README.
+        How the piece is kept from drifting; README says it in a director's words.
     drift_within : float
         Cents, for `Drift.WITHIN`.
     held_shift : float
