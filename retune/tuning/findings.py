@@ -7,15 +7,15 @@ from collections.abc import Iterator, Sequence
 import numpy as np
 
 from retune.errors import Finding, Weight
-from retune.harmony.model import Chord, Harmony
+from retune.harmony.model import Chord, Degree, Harmony
 from retune.score.model import Score
 from retune.tuning.alternatives import Options, is_exception
 from retune.tuning.intervals import Floats
 from retune.tuning.layout import Layout
-from retune.tuning.ratios import Template
+from retune.tuning.ratios import DEGREES, Template
 
 _BARS_NAMED = 12
-_SEVENTH = 3
+_SEVENTH = DEGREES.index(Degree.SEVENTH)
 _AT_BOUND = 0.005
 """Cents within which a held shift counts as being at its bound."""
 
@@ -55,7 +55,7 @@ def _exceptions(
             why = f", because {note.pitch} is held in {score.parts[note.part].name}"
         yield Finding(
             Weight.NOTE,
-            f"the seventh of the {chord.quality} on {chord.root} is {template.ratios[-1]}, "
+            f"the seventh of the {chord.quality} on {chord.root} is {template.ratios[_SEVENTH]}, "
             f"not 7/4{why}",
             score.place(chord.onset),
         )

@@ -186,7 +186,8 @@ def with_added(template: Template, added: tuple[Degree, ...], limit: int) -> Tem
         return template
     size = len(template.spelled)
     places = [*template.spelled, *[0] * (len(DEGREES) - size)]
-    ratios = [*(template.ratios or ()), *[Fraction(1)] * (len(DEGREES) - size)]
+    blank = [Fraction(1)] * len(DEGREES)
+    ratios = [*(template.ratios or blank[:size]), *blank[size:]]
     for degree in added:
         index = DEGREES.index(degree)
         places[index], ratio = _ADDED[degree]

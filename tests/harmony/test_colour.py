@@ -107,6 +107,17 @@ def test_added_tones_have_their_ratio(
     assert template.limit <= limit
 
 
+@pytest.mark.parametrize("limit", [3, 5, 7])
+@pytest.mark.parametrize("quality", Quality)
+def test_every_template_takes_every_added_tone(quality: Quality, limit: int) -> None:
+    tones = (Degree.NINTH, Degree.SIXTH, Degree.FOURTH, Degree.SECOND)
+    for plain in templates(quality, limit):
+        for tone in tones:
+            template = with_added(plain, (tone,), limit)
+            assert (template.ratios is None) == (plain.ratios is None)
+            assert template.semitones[: len(plain.semitones)] == plain.semitones
+
+
 def test_the_close_harmony_piece_has_its_minor_sixth_chord() -> None:
     harmony = analyse(read(FIXTURES / "lantern-street.musicxml"))
     assert "Bbm6" in [chord_symbol(chord) for chord in harmony.chords]
