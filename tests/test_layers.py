@@ -20,7 +20,7 @@ ROWS: tuple[tuple[str, ...], ...] = (
     ("score",),
     ("harmony",),
     ("tuning",),
-    ("tracks",),
+    ("tracks", "voice"),
     ("export",),
     ("pipeline",),
     ("cli",),
@@ -28,15 +28,18 @@ ROWS: tuple[tuple[str, ...], ...] = (
 )
 LEVEL = {name: level for level, row in enumerate(ROWS) for name in row}
 
-# Each third-party world has one door; numpy is the language of the numeric layers, and scipy is
-# for the tests alone.
+# Each third-party world has one door; numpy is the language of the numeric layers, scipy that of
+# signals.
 DOORS = {
     "click": {"cli"},
     "lxml": {"adapters"},
     "mido": {"adapters"},
     "music21": {"adapters"},
-    "numpy": {"harmony", "tuning", "export"},
-    "scipy": set(),
+    "numpy": {"adapters", "harmony", "tuning", "voice", "export"},
+    "scipy": {"adapters", "voice"},
+    "soundfile": {"adapters"},
+    "pyloudnorm": {"adapters"},
+    "fluidsynth": {"adapters"},
 }
 
 MODULES = sorted(ROOT.rglob("*.py"))

@@ -25,6 +25,11 @@ class PartKind(StrEnum):
     VOICE = "voice"
     ACCOMPANIMENT = "accompaniment"
     """Its pitch cannot move: piano, organ, pitched percussion."""
+    GUIDE = "guide"
+    """Starting notes or a drone, which learning tracks add; their pitch is given."""
+    CLICK = "click"
+    """Count-in and click, which learning tracks add; keys are those of the General MIDI
+    percussion map."""
 
 
 class VoiceType(StrEnum):
@@ -59,6 +64,11 @@ class Part:
     def tuned(self) -> bool:
         """Whether the part's pitch follows the just targets."""
         return self.kind is PartKind.VOICE
+
+    @property
+    def guides(self) -> bool:
+        """Whether the part is no music of the piece but helps to practise it."""
+        return self.kind in (PartKind.GUIDE, PartKind.CLICK)
 
 
 @dataclass(frozen=True, slots=True)

@@ -1,0 +1,1 @@
+"""The built-in choir voice and what else sounds in a learning track."""
