@@ -15,16 +15,17 @@ from retune.adapters.midi import RawMidi, write_midi_file
 from retune.errors import OutputError, Place
 from retune.export.base import OutputFile
 from retune.export.bend import DEFAULT_RANGE
-from retune.export.midi_channels import Channels, PartNeeds, allot
+from retune.export.midi_channels import Channels, PartNeeds, allot, percussion
 from retune.export.midi_check import check_midi
 from retune.export.midi_conductor import conductor, slowest_tempo_lost
 from retune.export.midi_plan import PlannedNote, Planner
-from retune.export.midi_tracks import CENTRE, part_tracks
-from retune.export.names import numbered, safe_name
+from retune.export.midi_tracks import CENTRE, pan, part_tracks, volume
+from retune.export.names import safe_name
 from retune.export.options import require_allowed
 from retune.export.ticks import Ticks, ticks_for
-from retune.score.model import Part, Score
-from retune.tracks.take import Take
+from retune.score.model import Part, PartKind, Score
+from retune.score.titles import part_titles
+from retune.tracks.take import Strip, Take
 
 VOICE_OOHS = 53
 """General MIDI program of sung parts, counting from 0. Its neighbour 52, choir aahs, is up to
@@ -89,29 +90,51 @@ class MidiExporter:
 
 
 def _file_of(take: Take, options: MidiOptions) -> OutputFile:
-    tuned, score = take.tuned, take.tuned.score
-    if not score.notes:
+    played = take.played
+    score = played.score
+    if not take.tuned.score.notes:
         raise OutputError("there is no note to write as MIDI", Place(score.file))
-    ticks = ticks_for(tuned)
-    planned = Planner(tuned, ticks, options.bend_range, options.glide_ms / 1000.0).notes()
-    by_part: list[list[PlannedNote]] = [[] for _ in score.parts]
+    ticks = ticks_for(played)
+    strips = _strips(take)
+    planned = Planner(played, ticks, options.bend_range, options.glide_ms / 1000.0).notes(strips)
+    by_part: dict[int, list[PlannedNote]] = {index: [] for index in strips}
     for note in planned:
         by_part[note.part].append(note)
+    clicks = [index for index in strips if score.parts[index].kind is PartKind.CLICK]
     needs = [
-        PartNeeds(notes, _program(part, options.program), part.tuned)
-        for part, notes in zip(score.parts, by_part, strict=True)
+        PartNeeds(notes, _program(score.parts[index], options.program), score.parts[index].tuned)
+        for index, notes in by_part.items()
+        if index not in clicks
     ]
     allotment = allot(score, needs, options.channels)
+    lanes = [*allotment.lanes, *(percussion(by_part[index]) for index in clicks)]
     end = max(ticks.at(score.end), *(note.off for note in planned))
-    names = numbered(part.name or f"Part {part.index + 1}" for part in score.parts)
-    tracks = part_tracks(names, allotment.lanes, _pans(score), options.bend_range, end)
+    titles = part_titles(score)
+    names = {index: titles[index] for index in strips}
+    tracks = part_tracks(names, lanes, _mix(score, strips), options.bend_range, end)
     data = write_midi_file(RawMidi(1, ticks.division, (conductor(score, ticks, end), *tracks)))
     return OutputFile(
         _file_name(take),
         data,
         "; ".join([allotment.note, *_remarks(score, ticks)]),
-        lambda found: check_midi(found, tuned, options.bend_range),
+        lambda found: check_midi(found, played, options.bend_range, tuple(strips)),
     )
+
+
+def _strips(take: Take) -> dict[int, Strip]:
+    """How each part that sounds stands in the mix, by part."""
+    found = {part.index: take.strip(part.index) for part in take.played.score.parts}
+    return {index: strip for index, strip in found.items() if strip is not None}
+
+
+def _mix(score: Score, strips: dict[int, Strip]) -> dict[int, tuple[int, int]]:
+    """Volume and pan of each part as MIDI has them."""
+    plain = all(strip == Strip() for strip in strips.values())
+    pans = dict(enumerate(_pans(score))) if plain else {}
+    return {
+        index: (volume(strip.gain_db), pans.get(index, pan(strip.pan)))
+        for index, strip in strips.items()
+    }
 
 
 def _program(part: Part, voices: int) -> int:

@@ -2,7 +2,7 @@
 
 Conventions
 -----------
-* Channels count from 0; channel 9 (the tenth) is the rhythm channel and never used.
+* Channels count from 0; channel 9 (the tenth) is for percussion and takes clicks alone.
 * Two notes fit one channel while both sound if their keys differ and their bends agree.
 
 A synth goes on bending a note's release tail after its note-off. So each part gets two
@@ -20,7 +20,8 @@ from retune.errors import OutputError
 from retune.export.midi_plan import PlannedNote
 from retune.score.model import Score
 
-CHANNELS = tuple(channel for channel in range(16) if channel != 9)
+PERCUSSION = 9
+CHANNELS = tuple(channel for channel in range(16) if channel != PERCUSSION)
 TAIL_SECONDS = 0.25
 """How long a release tail is taken to be heard (our choice: about that of a sung sound)."""
 
@@ -186,6 +187,11 @@ def allot(score: Score, parts: Sequence[PartNeeds], wish: Channels) -> Allotment
     if _count(one) <= len(CHANNELS):
         return _numbered(one, "one channel a part")
     return _shared(score, parts, _count(one))
+
+
+def percussion(notes: Sequence[PlannedNote]) -> Lane:
+    """The lane of clicks, on the percussion channel."""
+    return Lane(PERCUSSION, 0, tuple(notes))
 
 
 def _count(lanes: Sequence[Sequence[_OpenLane]]) -> int:

@@ -8,7 +8,7 @@ next it never leaves the span between the two.
 from __future__ import annotations
 
 from collections import defaultdict
-from collections.abc import Iterator
+from collections.abc import Iterator, Mapping, Sequence
 
 from retune.adapters.midi import read_midi_file
 from retune.errors import OutputError, RetuneError
@@ -28,8 +28,12 @@ _Target = tuple[float, TunedNote]
 """Pitch at the onset as a float key number, and the note."""
 
 
-def check_midi(data: bytes, tuned: TunedScore, bend_range: int) -> str:
+def check_midi(
+    data: bytes, tuned: TunedScore, bend_range: int, parts: Sequence[int] | None = None
+) -> str:
     """Compare a file's bytes with a tuned score.
+
+    `parts` are those that the file plays, in the order of its tracks; all of them by default.
 
     Returns
     -------
@@ -49,7 +53,11 @@ def check_midi(data: bytes, tuned: TunedScore, bend_range: int) -> str:
         raise OutputError(f"the MIDI file reads back wrong: {error.what}", hint=_FAULT) from error
     if not isinstance(raw.division, int):
         raise OutputError("the MIDI file reads back without ticks a quarter note", hint=_FAULT)
-    comparison = _Comparison(tuned, Ticks(raw.division), bend_step(bend_range) / 2 + _SLACK)
+    played = range(len(tuned.score.parts)) if parts is None else parts
+    # The conductor track comes before the parts.
+    tracks = {part: track for track, part in enumerate(played, start=1)}
+    bound = bend_step(bend_range) / 2 + _SLACK
+    comparison = _Comparison(tuned, tracks, Ticks(raw.division), bound)
     worst = max((comparison.error(*pair) for pair in comparison.pairs(heard)), default=0.0)
     return f"read back: {len(heard):,} notes, greatest rounding error {worst:.4f} cents"
 
@@ -57,8 +65,11 @@ def check_midi(data: bytes, tuned: TunedScore, bend_range: int) -> str:
 class _Comparison:
     """Compares notes heard with notes tuned; `bound` is in cents."""
 
-    def __init__(self, tuned: TunedScore, ticks: Ticks, bound: float) -> None:
+    def __init__(
+        self, tuned: TunedScore, tracks: Mapping[int, int], ticks: Ticks, bound: float
+    ) -> None:
         self._tuned = tuned
+        self._tracks = tracks
         self._ticks = ticks
         self._bound = bound
 
@@ -66,8 +77,10 @@ class _Comparison:
         """Every note heard with its tuned note: those of one part and onset, low to high."""
         targets: dict[tuple[int, int], list[_Target]] = defaultdict(list)
         for note in self._tuned.notes:
-            # The conductor track comes before the parts.
-            place = (note.note.part + 1, self._ticks.at(note.note.onset))
+            track = self._tracks.get(note.note.part)
+            if track is None:
+                continue
+            place = (track, self._ticks.at(note.note.onset))
             targets[place].append((pitch_of(self._tuned, note, note.segments[0]), note))
         found: dict[tuple[int, int], list[HeardNote]] = defaultdict(list)
         for one in heard:

@@ -10,13 +10,14 @@ Conventions
 from __future__ import annotations
 
 import math
-from collections.abc import Iterator
+from collections.abc import Container, Iterator
 from dataclasses import dataclass, replace
 from itertools import pairwise
 
 from retune.errors import OutputError
 from retune.export.bend import bend_step, bend_value, nearest_key
 from retune.export.ticks import Ticks
+from retune.score.model import PartKind
 from retune.score.tempo import TempoMap
 from retune.tuning.model import Segment, TunedNote, TunedScore
 from retune.units import reference_offset
@@ -48,7 +49,12 @@ class PlannedNote:
 
 
 def pitch_of(tuned: TunedScore, note: TunedNote, segment: Segment) -> float:
-    """Pitch of a segment as a float key number on the grid of A4 = 440 Hz."""
+    """Pitch of a segment as a float key number on the grid of A4 = 440 Hz.
+
+    A click's is its key in the percussion map, whatever the reference pitch.
+    """
+    if tuned.score.parts[note.note.part].kind is PartKind.CLICK:
+        return float(note.note.pitch.key)
     offset = reference_offset(tuned.policy.reference_hz)
     return note.note.pitch.key + (segment.cents + offset) / 100.0
 
@@ -62,12 +68,16 @@ class Planner:
     bend_range: int
     glide: float
 
-    def notes(self) -> list[PlannedNote]:
-        """All notes by onset, then part, then key.
+    def notes(self, parts: Container[int]) -> list[PlannedNote]:
+        """All notes of these parts by onset, then part, then key.
 
         Raises `OutputError` for a pitch that no MIDI key and bend reaches.
         """
-        planned = [self._planned(index, note) for index, note in enumerate(self.tuned.notes)]
+        planned = [
+            self._planned(index, note)
+            for index, note in enumerate(self.tuned.notes)
+            if note.note.part in parts
+        ]
         planned.sort(key=lambda note: (note.on, note.part, note.key))
         return planned
 

@@ -6,7 +6,8 @@ the track of the note that needs them, and before it (RP-001 orders nothing betw
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Sequence
+import math
+from collections.abc import Iterator, Mapping, Sequence
 from operator import itemgetter
 
 from retune.adapters.midi import (
@@ -38,27 +39,51 @@ Timed = tuple[int, Event]
 """Place in time, which is tick * _RANKS + rank among the events of that tick; event."""
 
 
+def volume(gain_db: float) -> int:
+    """Channel volume for a gain: 40 log10 of its share (General MIDI 2), from the usual level.
+
+    >>> volume(0.0), volume(-9.0), volume(-100.0)
+    (100, 60, 0)
+    """
+    return min(round(_FULL_VOLUME * math.pow(10.0, gain_db / 40.0)), 127)
+
+
+def pan(place: float) -> int:
+    """Pan for a place from -1 (left) to 1 (right).
+
+    >>> pan(-1.0), pan(0.0), pan(1.0)
+    (0, 64, 127)
+    """
+    return min(round(CENTRE * (1.0 + place)), 127)
+
+
 def part_tracks(
-    names: Sequence[str], lanes: Sequence[Lane], pans: Sequence[int], bend_range: int, end: int
+    names: Mapping[int, str],
+    lanes: Sequence[Lane],
+    mix: Mapping[int, tuple[int, int]],
+    bend_range: int,
+    end: int,
 ) -> list[RawTrack]:
     """One track a part.
 
     Parameters
     ----------
-    names, pans : sequences
-        The parts' names and places from left (0) to right (127), in score order.
+    names : mapping
+        Name by part, in the order of the tracks.
     lanes : sequence of Lane
         The channels with their notes.
+    mix : mapping
+        Volume and pan (0 left to 127 right) by part.
     bend_range : int
         Semitones.
     end : int
         The tick where the piece ends.
     """
-    timed: list[list[Timed]] = [[] for _ in names]
+    timed: dict[int, list[Timed]] = {part: [] for part in names}
     for lane in lanes:
         home = lane.notes[0].part
-        pan = pans[home] if len(lane.parts) == 1 else CENTRE
-        timed[home].extend((_SETUP, event) for event in _setup(lane, pan, bend_range))
+        level, place = mix[home] if len(lane.parts) == 1 else (_FULL_VOLUME, CENTRE)
+        timed[home].extend((_SETUP, event) for event in _setup(lane, level, place, bend_range))
         for part, tick, bend in _bends(lane):
             timed[part].append((tick * _RANKS + _BEND, bend))
         for note in lane.notes:
@@ -67,7 +92,7 @@ def part_tracks(
             events.append((off + _OFF, NoteOff(lane.channel, note.key)))
             if words := lyric_bytes(note.lyric):
                 events.append((on + _LYRIC, Meta(MetaType.LYRIC, words)))
-    return [_track(name, events, end) for name, events in zip(names, timed, strict=True)]
+    return [_track(names[part], events, end) for part, events in timed.items()]
 
 
 def _track(name: str, timed: list[Timed], end: int) -> RawTrack:
@@ -76,13 +101,13 @@ def _track(name: str, timed: list[Timed], end: int) -> RawTrack:
     return RawTrack((title, *[(place // _RANKS, event) for place, event in timed]), end)
 
 
-def _setup(lane: Lane, pan: int, bend_range: int) -> Iterator[Event]:
+def _setup(lane: Lane, level: int, place: int, bend_range: int) -> Iterator[Event]:
     """What a channel is told at the start: all of it before its first note."""
     channel = lane.channel
     yield Control(channel, _RESET_CONTROLLERS, 0)
     yield Program(channel, lane.program)
-    yield Control(channel, _VOLUME, _FULL_VOLUME)
-    yield Control(channel, _PAN, pan)
+    yield Control(channel, _VOLUME, level)
+    yield Control(channel, _PAN, place)
     # RPN 0, bend range: whole semitones, no cents; then the null RPN, so that a stray data
     # entry changes nothing.
     for controller, value in (

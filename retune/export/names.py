@@ -6,7 +6,6 @@ Names are joined as text, never as paths: a score called bwv6.6 stays bwv6.6.
 from __future__ import annotations
 
 import unicodedata
-from collections.abc import Iterable
 
 from retune.adapters.filenames import FORBIDDEN, MAX_NAME_BYTES, is_reserved
 
@@ -43,23 +42,3 @@ def _shown(char: str) -> str:
     if kind in ("Zs", "Zl", "Zp") or char in "\t\n\r\v\f":
         return " "
     return "" if kind in ("Cc", "Cf") else char
-
-
-def numbered(names: Iterable[str]) -> tuple[str, ...]:
-    """Names made different: the second "Alto" becomes "Alto 2".
-
-    Names that differ only in case count as equal, as some systems take them so.
-
-    >>> numbered(["Alto", "alto", "Bass"])
-    ('Alto', 'alto 2', 'Bass')
-    """
-    found: list[str] = []
-    taken: set[str] = set()
-    for name in names:
-        candidate, count = name, 1
-        while candidate.casefold() in taken:
-            count += 1
-            candidate = f"{name} {count}"
-        taken.add(candidate.casefold())
-        found.append(candidate)
-    return tuple(found)

@@ -145,6 +145,18 @@ class Bar:
         """One beat of the time signature, in quarter notes."""
         return Fraction(4, self.metre[1])
 
+    @property
+    def counted_beat(self) -> Fraction:
+        """One beat as it is counted aloud, in quarter notes: three eighths in 6/8."""
+        beats, unit = self.metre
+        compound = unit >= 8 and beats % 3 == 0 and beats > 3
+        return self.beat_length * 3 if compound else self.beat_length
+
+    @property
+    def full_length(self) -> Fraction:
+        """A full bar of this metre, in quarter notes, however long this one is."""
+        return self.beat_length * self.metre[0]
+
 
 @dataclass(frozen=True, slots=True)
 class ChordSymbol:

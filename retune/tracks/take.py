@@ -37,6 +37,8 @@ class Take:
         are parts of it, the bars of the lead-in its first; None where there is none.
     strips : tuple of Strip or None
         One for each part of `played`, None for a silent part; empty for a plain mix.
+    sides : bool
+        Whether left and right stand against each other, so that both must be equally loud.
     track, of : int
         The place among the learning tracks of a piece, from 0, and the number of the last one.
     """
@@ -46,6 +48,7 @@ class Take:
     folder: str = ""
     lead_in: TunedScore | None = None
     strips: tuple[Strip | None, ...] = ()
+    sides: bool = False
     track: int = 0
     of: int = 0
 

@@ -7,7 +7,8 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from retune.adapters.filenames import check_names
-from retune.export.names import numbered, safe_name
+from retune.export.names import safe_name
+from retune.score.titles import numbered
 
 
 @pytest.mark.parametrize(
