@@ -2,27 +2,38 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Mapping, Sequence
+from dataclasses import replace
+from itertools import count
 from pathlib import Path
 from typing import TYPE_CHECKING
 
 from retune.harmony import analyse
 from retune.score.read import read, read_bytes
+from retune.tracks.learning import excerpt, learning_takes
 from retune.tracks.take import Take
 from retune.tuning import tune
+from retune.tuning.policy import Temperament
 
 if TYPE_CHECKING:
     from retune.adapters.disk import WriteReport
-    from retune.export.base import OutputFile
+    from retune.export.base import Output
     from retune.score.options import ReadOptions
+    from retune.tracks.options import TrackOptions
     from retune.tuning.model import TunedScore
     from retune.tuning.policy import Policy
 
 Settings = Mapping[str, str]
 """Options of one exporter as text, by name."""
 
-ALL_OUTPUTS = ("midi", "scala", "notes")
+Progress = Callable[[int, int], None]
+"""Told how many files are done, and of how many."""
+
+ALL_OUTPUTS = ("audio", "midi", "scala", "notes")
 """What `make` writes."""
+
+TRACK_OUTPUTS = ("audio", "midi")
+"""What `tracks` writes."""
 
 
 def retuned(source: Path | bytes, name: str, reading: ReadOptions, policy: Policy) -> TunedScore:
@@ -34,9 +45,25 @@ def retuned(source: Path | bytes, name: str, reading: ReadOptions, policy: Polic
     return tune(score, analyse(score, policy.tonic), policy)
 
 
+def cut(tuned: TunedScore, bars: str) -> TunedScore:
+    """Only these bars, tuned as they are within the piece; raises `WishError`."""
+    from retune.tuning.refigure import refigured
+
+    return refigured(excerpt(tuned, bars))
+
+
 def takes_of(tuned: TunedScore) -> tuple[Take, ...]:
-    """The mixes of a piece: the full mix."""
+    """The full mix alone, without lead-in."""
     return (Take(tuned),)
+
+
+def learning_tracks(tuned: TunedScore, options: TrackOptions) -> tuple[Take, ...]:
+    """The full mix and every part's tracks; raises `WishError` for a part or bars not there."""
+    equal = None
+    if options.compare:
+        policy = replace(tuned.policy, temperament=Temperament.EQUAL)
+        equal = tune(tuned.score, tuned.harmony, policy)
+    return learning_takes(tuned, options, equal)
 
 
 def check_wishes(exporters: Sequence[str], settings: Mapping[str, Settings]) -> None:
@@ -50,7 +77,7 @@ def check_wishes(exporters: Sequence[str], settings: Mapping[str, Settings]) -> 
 
 def exported(
     takes: Sequence[Take], exporters: Sequence[str], settings: Mapping[str, Settings]
-) -> list[OutputFile]:
+) -> list[Output]:
     """Every file that the named exporters make of the takes; nothing touches the disk."""
     from retune.export.registry import find_exporters, parse_options
 
@@ -91,16 +118,39 @@ def write(
     return write_all(exported(takes_of(tuned), exporters, settings or {}), Path(folder))
 
 
-def make(
-    tuned: TunedScore, folder: str | Path, settings: Mapping[str, Settings] | None = None
+def write_learning(
+    takes: Sequence[Take],
+    folder: str | Path,
+    exporters: Sequence[str] = ALL_OUTPUTS,
+    settings: Mapping[str, Settings] | None = None,
+    archives: bool = False,
+    progress: Progress | None = None,
 ) -> WriteReport:
-    """Write everything for one piece: all outputs and a text on how to use them.
+    """Write a piece's takes and a text on how to use them: all files or none.
+
+    Parameters
+    ----------
+    exporters, settings
+        As for `write`.
+    archives : bool
+        Also one zip archive for each section, of its tracks and the full mix.
+    progress : callable, optional
+        Called with the number of files done and of all files, from 0 on.
 
     Raises as `write` does.
     """
     from retune.adapters.disk import write_all
+    from retune.export.archives import section_archives
     from retune.export.howto import how_to_use
 
-    takes = takes_of(tuned)
-    files = exported(takes, ALL_OUTPUTS, settings or {})
-    return write_all([*files, how_to_use(takes, files)], Path(folder))
+    files = exported(takes, exporters, settings or {})
+    files.append(how_to_use(takes, files))
+    done = count(1)
+    if progress is not None:
+        progress(0, len(files))
+    return write_all(
+        files,
+        Path(folder),
+        section_archives(takes, [file.name for file in files]) if archives else (),
+        lambda _: progress(next(done), len(files)) if progress is not None else None,
+    )

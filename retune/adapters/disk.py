@@ -21,12 +21,15 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Protocol
 
+from retune.adapters.archive import write_zip
 from retune.adapters.filenames import check_names
 from retune.adapters.manifest import MANIFEST_NAME, Manifest, digest_of, digest_of_file
 from retune.errors import OutputError, Place
 
 _STAGING = ".retune-staging-"
 _FLUSHED_TOGETHER = 8
+_MADE_TOGETHER = 4
+"""Contents made at the same time at most, as each may take much memory."""
 _NO_SPACE = "Free some space on the disk, or choose another folder"
 _HINTS = {
     errno.ENOSPC: _NO_SPACE,
@@ -82,8 +85,24 @@ class WriteReport:
     written: tuple[WrittenFile, ...]
 
 
-def write_all(files: Sequence[Writable], folder: Path) -> WriteReport:
+@dataclass(frozen=True, slots=True)
+class Archive:
+    """A zip archive of files of the same run: its name, and names in it by names of files."""
+
+    name: str
+    members: Mapping[str, str]
+
+
+def write_all(
+    files: Sequence[Writable],
+    folder: Path,
+    archives: Sequence[Archive] = (),
+    progress: Callable[[str], None] | None = None,
+) -> WriteReport:
     """Write all files into a folder, which is made where it does not exist.
+
+    `progress` is called with the name of each file once its content is there. Contents are
+    asked for once, from several threads, and not kept in memory.
 
     Raises
     ------
@@ -92,12 +111,12 @@ def write_all(files: Sequence[Writable], folder: Path) -> WriteReport:
         only in case, a file of the same name that is not the tool's own and unchanged, a folder
         that cannot be written, a full disk, or a file that fails its check. Nothing is left.
     """
-    check_names([file.name for file in files])
+    check_names([*(file.name for file in files), *(archive.name for archive in archives)])
     if not files:
         return WriteReport(folder, ())
     undo: _Undo = []
     try:
-        return _write(files, folder, undo)
+        return _write(files, folder, archives, undo, progress or (lambda _: None))
     except BaseException:
         _run_all(undo)
         raise
@@ -119,20 +138,35 @@ def _run_all(undo: _Undo) -> None:
         undo.pop()
 
 
-def _write(files: Sequence[Writable], folder: Path, undo: _Undo) -> WriteReport:
+def _write(
+    files: Sequence[Writable],
+    folder: Path,
+    archives: Sequence[Archive],
+    undo: _Undo,
+    progress: Callable[[str], None],
+) -> WriteReport:
     with _explained(folder):
         _make_folder(folder, undo)
         manifest = Manifest.load(folder / MANIFEST_NAME)
-    for file in files:
-        _require_replaceable(folder, file.name, manifest)
+    names = [*(file.name for file in files), *(archive.name for archive in archives)]
+    for name in names:
+        _require_replaceable(folder, name, manifest)
     with _explained(folder):
         staging = folder / f"{_STAGING}{secrets.token_hex(8)}"
         undo.append(lambda: shutil.rmtree(staging, ignore_errors=True))
         staging.mkdir()
-    staged = {file.name: staging / str(number) for number, file in enumerate(files)}
-    _stage_all(files, staged, folder)
-    written = tuple(_read_back(file, staged[file.name], folder) for file in files)
-    digests = {file.name: digest_of(file.data) for file in files}
+    staged = {name: staging / str(number) for number, name in enumerate(names)}
+    digests = _stage_all(files, staged, folder, progress)
+    for archive in archives:
+        with _explained(folder / archive.name):
+            members = {inner: staged[name] for name, inner in archive.members.items()}
+            write_zip(staged[archive.name], members)
+            digests[archive.name] = digest_of_file(staged[archive.name])
+    _flush_all(staged, folder)
+    written = [_read_back(file, staged[file.name], folder, digests[file.name]) for file in files]
+    written += [
+        WrittenFile(archive.name, staged[archive.name].stat().st_size) for archive in archives
+    ]
     series = {file.name: file.series for file in files if file.series}
     stale = manifest.superseded(digests, set(series.values()))
     # Old and new digests both stand while files are renamed, so that even after a power cut
@@ -149,7 +183,7 @@ def _write(files: Sequence[Writable], folder: Path, undo: _Undo) -> WriteReport:
     shutil.rmtree(staging, ignore_errors=True)
     for place in {folder, *((folder / name).parent for name in staged)}:
         _flush_folder(place)
-    return WriteReport(folder, written)
+    return WriteReport(folder, tuple(written))
 
 
 @contextmanager
@@ -217,11 +251,34 @@ def _refused(path: Path, why: str) -> OutputError:
     )
 
 
-def _stage_all(files: Sequence[Writable], staged: Mapping[str, Path], folder: Path) -> None:
-    """Write every file where nobody looks, and flush all of them to the disk."""
-    for file in files:
+def _stage_all(
+    files: Sequence[Writable],
+    staged: Mapping[str, Path],
+    folder: Path,
+    progress: Callable[[str], None],
+) -> dict[str, str]:
+    """Write every file where nobody looks; returns what each should hold, as digests."""
+
+    def stage(file: Writable) -> str:
+        data = file.data
         with _explained(folder / file.name):
-            staged[file.name].write_bytes(file.data)
+            staged[file.name].write_bytes(data)
+        return digest_of(data)
+
+    digests: dict[str, str] = {}
+    pool = ThreadPoolExecutor(min(os.cpu_count() or 1, _MADE_TOGETHER))
+    try:
+        for file, digest in zip(files, pool.map(stage, files), strict=True):
+            digests[file.name] = digest
+            progress(file.name)
+    finally:
+        # After a failure or an interrupt, what nobody waits for is not begun.
+        pool.shutdown(wait=True, cancel_futures=True)
+    return digests
+
+
+def _flush_all(staged: Mapping[str, Path], folder: Path) -> None:
+    """Flush all staged files to the disk."""
 
     def flush(name: str) -> None:
         with _explained(folder / name), staged[name].open("rb+") as stream:
@@ -233,11 +290,11 @@ def _stage_all(files: Sequence[Writable], staged: Mapping[str, Path], folder: Pa
             pass
 
 
-def _read_back(file: Writable, path: Path, folder: Path) -> WrittenFile:
+def _read_back(file: Writable, path: Path, folder: Path, digest: str) -> WrittenFile:
     """Compare a staged file with what it should hold, and let its check read it."""
     with _explained(folder / file.name):
         found = path.read_bytes()
-    if found != file.data:
+    if digest_of(found) != digest:
         raise OutputError(
             "reads back otherwise than it was written",
             Place(str(folder / file.name)),

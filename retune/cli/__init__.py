@@ -22,6 +22,7 @@ FAILED, WRONG_USAGE, INTERRUPTED = 1, 2, 130
 COMMANDS = {
     "make": "retune.cli.make",
     "show": "retune.cli.show",
+    "tracks": "retune.cli.tracks",
     "export": "retune.cli.export",
     "exporters": "retune.cli.exporters",
 }

@@ -6,7 +6,7 @@ import os
 import shutil
 import sys
 import textwrap
-from collections.abc import Iterator, Sequence
+from collections.abc import Callable, Iterator, Sequence
 from contextlib import contextmanager
 
 import click
@@ -83,3 +83,20 @@ def working(what: str, quiet: bool) -> Iterator[None]:
     finally:
         if live:
             click.echo("\r" + " " * (len(what) + 2) + "\r", err=True, nl=False)
+
+
+@contextmanager
+def progress_bar(what: str, quiet: bool) -> Iterator[Callable[[int, int], None] | None]:
+    """Show on a terminal how much is done; yields what is to be told (done, of all) from 0 on."""
+    if quiet or not sys.stderr.isatty():
+        yield None
+        return
+    with click.progressbar(
+        length=1, label=what, file=sys.stderr, width=0, show_eta=False, show_pos=True
+    ) as bar:
+
+        def tell(done: int, of: int) -> None:
+            bar.length = of
+            bar.update(done - bar.pos)
+
+        yield tell

@@ -10,6 +10,7 @@ import click
 
 from retune.cli.console import say, working, wrapped
 from retune.cli.options import (
+    bars_option,
     examples,
     grouped,
     score_argument,
@@ -24,7 +25,7 @@ from retune.errors import WishError
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
-    from retune.export.base import OutputFile
+    from retune.export.base import Output
     from retune.score.options import ReadOptions
     from retune.tuning.policy import Policy
 
@@ -55,6 +56,7 @@ if TYPE_CHECKING:
     metavar="FOLDER",
     help="Folder to write to, or - for one file to standard output.",
 )
+@bars_option
 @settings_option
 @tuning_options
 @talk_options
@@ -62,6 +64,7 @@ def command(
     score: Path,
     exporters: tuple[str, ...],
     output: str,
+    bars: str | None,
     settings: tuple[tuple[str, str, str], ...],
     policy: Policy,
     reading: ReadOptions,
@@ -81,6 +84,8 @@ def command(
     source, name = source_of(score)
     with working(f"Tuning {name}", quiet):
         tuned = pipeline.retuned(source, name, reading, policy)
+        if bars:
+            tuned = pipeline.cut(tuned, bars)
     if output == "-":
         notes = [_sent(pipeline.exported(pipeline.takes_of(tuned), chosen, wishes))]
     else:
@@ -91,7 +96,7 @@ def command(
         say("\n".join(notes))
 
 
-def _sent(files: Sequence[OutputFile]) -> str:
+def _sent(files: Sequence[Output]) -> str:
     """Send the only file to standard output, checked; returns what is to be said of it."""
     if len(files) != 1:
         raise WishError(
@@ -99,7 +104,8 @@ def _sent(files: Sequence[OutputFile]) -> str:
             hint="Choose one output with a single file, such as --to midi, or give a folder",
         )
     (file,) = files
-    checked = file.check(file.data) if file.check is not None else ""
-    sys.stdout.buffer.write(file.data)
+    data = file.data
+    checked = file.check(data) if file.check is not None else ""
+    sys.stdout.buffer.write(data)
     sys.stdout.buffer.flush()
     return wrapped("; ".join(line for line in (file.note, checked) if line))

@@ -23,6 +23,18 @@ def tuning_options(command: Command) -> Command:
 score_argument = click.argument("score", type=click.Path(path_type=Path, allow_dash=True))
 """SCORE: a file, or - for standard input."""
 
+folder_option = click.option(
+    "-o",
+    "--output",
+    type=click.Path(path_type=Path),
+    metavar="FOLDER",
+    help="Folder to write to.  [default: named after the score, beside it]",
+)
+
+bars_option = click.option(
+    "--bars", metavar="A-B", help="Only these bars: printed numbers or rehearsal letters."
+)
+
 talk_options = stacked(
     click.option("--findings", "all_findings", is_flag=True, help="List every remark."),
     click.option("-q", "--quiet", is_flag=True, help="Say nothing but errors."),

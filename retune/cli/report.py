@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from itertools import groupby
 from typing import TYPE_CHECKING
 
 import click
@@ -58,28 +57,35 @@ def report_findings(tuned: TunedScore, everything: bool) -> None:
     print_findings((*tuned.score.findings, *tuned.findings), everything)
 
 
+_NAMED = 3
+"""Files of one folder that are spoken of one by one; of more, the first stands for all."""
+
+
 def _folder_of(name: str) -> str:
-    folder, slash, _ = name.rpartition("/")
-    return folder + slash
+    folder, slash, _ = name.partition("/")
+    return folder + slash if slash else ""
 
 
-def _about(file: WrittenFile, alone: bool) -> str:
+def _about(file: WrittenFile, named: bool) -> str:
     """A file's notes, with its name unless it is the only one of its folder."""
     words = "; ".join(line for line in (file.note, file.checked) if line)
-    return words if alone else f"{file.name.rpartition('/')[2]}: {words}"
+    return f"{file.name.rpartition('/')[2]}: {words}" if named else words
 
 
 def written_lines(report: WriteReport) -> list[str]:
     """The files written, folder by folder, and what is to be said of them."""
     lines = [f"Wrote {counted(len(report.written), 'file')} to {report.folder}"]
-    for folder, group in groupby(report.written, key=lambda file: _folder_of(file.name)):
-        files = list(group)
+    by_folder: dict[str, list[WrittenFile]] = {}
+    for file in report.written:
+        by_folder.setdefault(_folder_of(file.name), []).append(file)
+    for folder, files in by_folder.items():
         alone = len(files) == 1
         what = files[0].name.removeprefix(folder) if alone else counted(len(files), "file")
-        lines.append(f"  {folder:<8} {what}" if folder else f"  {what}")
-        lines += [
-            wrapped(f"           {_about(file, alone)}", " " * 11)
-            for file in files
-            if file.note or file.checked
-        ]
+        lines.append(f"  {folder:<9} {what}" if folder else f"  {what}")
+        noted = [file for file in files if file.note or file.checked]
+        told = noted if len(noted) <= _NAMED else noted[:1]
+        more = len(noted) - len(told)
+        for file in told:
+            words = _about(file, not alone) + (f" (and {more} more like it)" if more else "")
+            lines.append(wrapped(f"            {words}", " " * 12))
     return lines

@@ -9,6 +9,7 @@ import click
 
 from retune.cli.console import width, working
 from retune.cli.options import (
+    bars_option,
     examples,
     score_argument,
     source_of,
@@ -32,9 +33,7 @@ if TYPE_CHECKING:
     ),
 )
 @score_argument
-@click.option(
-    "--bars", metavar="A-B", help="Only these bars: printed numbers or rehearsal letters."
-)
+@bars_option
 @click.option("--figures-only", is_flag=True, help="Leave out the chord table.")
 @tuning_options
 @talk_options

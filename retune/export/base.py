@@ -37,6 +37,36 @@ class OutputFile:
     series: str = ""
 
 
+@dataclass(frozen=True)
+class LateFile:
+    """A file whose bytes are made when they are wanted, such as sound.
+
+    Names are known at once, so that nothing is rendered that could not be written; bytes of
+    several files may be asked for at the same time, from several threads, and each once.
+
+    Parameters
+    ----------
+    name, note, check, series
+        As of `OutputFile`.
+    render : callable
+        Makes the whole content.
+    """
+
+    name: str
+    render: Callable[[], bytes]
+    note: str = ""
+    check: Callable[[bytes], str] | None = None
+    series: str = ""
+
+    @property
+    def data(self) -> bytes:
+        """The whole content, made anew each time."""
+        return self.render()
+
+
+Output = OutputFile | LateFile
+
+
 class Exporter(Protocol):
     """The contract of an exporter plug-in (entry-point group `retune.exporters`).
 
@@ -49,6 +79,6 @@ class Exporter(Protocol):
     suffixes: ClassVar[tuple[str, ...]]
     Options: ClassVar[type[Any]]
 
-    def export(self, takes: Sequence[Take], options: Any) -> Iterator[OutputFile]:
+    def export(self, takes: Sequence[Take], options: Any) -> Iterator[Output]:
         """Yield the files; raises `OutputError` naming bar and beat where it cannot."""
         ...

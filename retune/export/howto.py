@@ -5,7 +5,9 @@ from __future__ import annotations
 import textwrap
 from collections.abc import Iterator, Sequence
 
-from retune.export.base import OutputFile
+from retune.export.base import Output, OutputFile
+from retune.score.model import Note
+from retune.tracks.guides import DRONE, STARTING_NOTES
 from retune.tracks.take import Take
 from retune.tuning.model import TunedScore
 from retune.tuning.policy import Drift, Temperament
@@ -22,9 +24,18 @@ _DRIFT_WORDS = {
 
 _KINDS = (
     (
+        "tracks/",
+        (
+            "Sound files to practise with. The full mix has everybody. In your own folder: "
+            "predominant, your part in front of the others; alone, only your part (over the "
+            "accompaniment, if there is one); missing, all but your part, for you to sing. They "
+            "all start together and run equally long, so that they can be lined up."
+        ),
+    ),
+    (
         "midi/",
         (
-            "The whole piece as MIDI. Every synth or sequencer that obeys pitch bend plays it "
+            "The same as MIDI. Every synth or sequencer that obeys pitch bend plays it "
             "in tune: load it as it is, and do not merge or renumber its channels."
         ),
     ),
@@ -43,6 +54,26 @@ _KINDS = (
             "a program (.json)."
         ),
     ),
+)
+
+_BEFORE = (
+    "Before the music you hear the notes of the first chord from the bottom up, then your own "
+    "first note, even if you enter later. The full mix leaves your own note out."
+)
+_TONIC_BEFORE = "Before the music you hear the home note."
+_SIDES = (
+    "In the tracks with left and right in their names your part is in one ear and the others in "
+    "the other. Use them to find your line; to hear whether a chord beats, both must reach the "
+    "same ear, so take another track for that."
+)
+_COMPARE = (
+    "The last track plays a passage twice: first as it is tuned here, then, after a pause, in "
+    "the piano's equal temperament."
+)
+_TUNED_LIKE = (
+    "Sing with the track softly at first, and listen for the chord to lock: the roughness goes, "
+    "and the sound stands still. The voice holds one vowel unless it was asked to follow the "
+    "words; sing your own words, not its vowel."
 )
 
 _READING_CENTS = (
@@ -79,7 +110,29 @@ def _tuning_words(tuned: TunedScore) -> str:
     return f"Tuned in just intonation. {_DRIFT_WORDS[policy.drift]}{sevenths}"
 
 
-def _sections(tuned: TunedScore, names: Sequence[str]) -> Iterator[str]:
+def _practising(takes: Sequence[Take]) -> Iterator[str]:
+    """How to use the tracks, by what is in them."""
+    guides = {part.name: part for take in takes for part in take.played.score.parts if part.guides}
+    if STARTING_NOTES in guides:
+        alone = {len(_starting(take)) for take in takes} == {1}
+        yield _TONIC_BEFORE if alone else _BEFORE
+    if DRONE in guides:
+        yield "A drone is held below the music. It moves with the tuned pitch."
+    yield _TUNED_LIKE
+    if any(take.sides for take in takes):
+        yield _SIDES
+    if any(take.lead_in is not None and not take.folder and take.track for take in takes):
+        yield _COMPARE
+
+
+def _starting(take: Take) -> list[Note]:
+    """The starting notes of a take."""
+    parts = take.played.score.parts
+    return [n for n in take.played.score.notes if parts[n.part].name == STARTING_NOTES]
+
+
+def _sections(takes: Sequence[Take], names: Sequence[str]) -> Iterator[str]:
+    tuned = takes[0].tuned
     title = tuned.score.title or tuned.score.stem
     yield f"{title}\n{'=' * min(len(title), _WIDTH)}"
     if tuned.score.composer:
@@ -92,6 +145,9 @@ def _sections(tuned: TunedScore, names: Sequence[str]) -> Iterator[str]:
     for folder, words in _KINDS:
         if any(name.startswith(folder) for name in names):
             yield f"{folder}\n{_paragraph(words, '    ')}"
+    if any(name.startswith("tracks/") for name in names):
+        yield "PRACTISING WITH THE TRACKS"
+        yield from map(_paragraph, _practising(takes))
     if tuned.score.left_out:
         yield "WHAT WAS LEFT OUT"
         yield _paragraph(
@@ -106,7 +162,7 @@ def _sections(tuned: TunedScore, names: Sequence[str]) -> Iterator[str]:
     yield _paragraph(VOICE)
 
 
-def how_to_use(takes: Sequence[Take], files: Sequence[OutputFile]) -> OutputFile:
+def how_to_use(takes: Sequence[Take], files: Sequence[Output]) -> OutputFile:
     """The text for a folder that holds these files."""
-    text = "\n\n".join(_sections(takes[0].tuned, [file.name for file in files])) + "\n"
+    text = "\n\n".join(_sections(takes, [file.name for file in files])) + "\n"
     return OutputFile(NAME, text.encode("utf-8"))
