@@ -19,7 +19,7 @@ from retune.voice.curves import Curve
 from retune.voice.formants import formants
 from retune.voice.loudness import gain_db, levelled, pulse_shape
 from retune.voice.options import SoundOptions
-from retune.voice.phrasing import Placed, Sung, median_key, phrases
+from retune.voice.phrasing import Placed, Sung, glide, median_key, phrases
 from retune.voice.spectrum import spectrum
 from retune.voice.tone import Samples, Singer, Tone, add_tone
 from retune.voice.wavetable import Table
@@ -31,7 +31,6 @@ LEVEL = -24.0
 ATTACK = 0.07
 RELEASE_BEFORE, RELEASE_AFTER = 0.03, 0.06
 SLIDE_BEFORE, SLIDE_AFTER = 0.025, 0.03
-GLIDE = 0.04
 BLEND_BEFORE, BLEND_AFTER = 0.03, 0.05
 DIP = 0.03
 MOST_DELAY = 0.03
@@ -206,7 +205,7 @@ def _tone(phrase: Sequence[Sung], rate: int) -> Tone:
             before, after = _window(previous, sung, BLEND_BEFORE, BLEND_AFTER, rate)
             colour.to(sung.start - before, place - 1.0)
             colour.to(sung.start + after, float(place))
-        _glide(pitch, sung, rate)
+        glide(pitch, sung, rate)
         previous = sung
     before = min(round(RELEASE_BEFORE * rate), last.length // 4)
     stop = last.stop + round(RELEASE_AFTER * rate)
@@ -241,12 +240,3 @@ def _join(pitch: Curve, gain: Curve, previous: Sung, sung: Sung, rate: int) -> N
         if depth < 1.0:
             gain.to(sung.start, depth * min(_gain(previous), _gain(sung)))
         gain.to(sung.start + after, _gain(sung))
-
-
-def _glide(pitch: Curve, sung: Sung, rate: int) -> None:
-    """The moves of a held note."""
-    for place in range(1, len(sung.path)):
-        at, height = sung.path[place]
-        end = sung.path[place + 1][0] if place + 1 < len(sung.path) else sung.stop
-        pitch.to(at, sung.path[place - 1][1])
-        pitch.to(at + min(round(GLIDE * rate), (end - at) // 2), height)

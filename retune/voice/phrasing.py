@@ -13,6 +13,7 @@ from collections.abc import Iterable, Iterator, Sequence
 from dataclasses import dataclass, replace
 
 from retune.tuning.model import TunedNote, TunedScore
+from retune.voice.curves import Curve
 
 BREATH_SECONDS = 0.25
 """A breath takes this much from the end of a note, but no more than a quarter of it."""
@@ -24,6 +25,9 @@ SHORTEST_SECONDS = 0.005
 """What is shorter cannot sound without a click, and does not."""
 
 SHORTEST_STACCATO = 0.08
+
+GLIDE_SECONDS = 0.04
+"""A held note moves in this time, or in half of the stretch at its new height."""
 
 _BREATHS = frozenset({"breath", "caesura", "fermata"})
 _SHORTENED = {"staccatissimo": 0.45, "staccato": 0.6}
@@ -158,3 +162,12 @@ def median_key(notes: Sequence[Placed]) -> float:
     if not keys:
         return 60.0
     return 0.5 * (keys[(len(keys) - 1) // 2] + keys[len(keys) // 2])
+
+
+def glide(pitch: Curve, sung: Sung, rate: int) -> None:
+    """Add the moves of a held note to a curve of heights."""
+    for place in range(1, len(sung.path)):
+        at, height = sung.path[place]
+        end = sung.path[place + 1][0] if place + 1 < len(sung.path) else sung.stop
+        pitch.to(at, sung.path[place - 1][1])
+        pitch.to(at + min(round(GLIDE_SECONDS * rate), (end - at) // 2), height)

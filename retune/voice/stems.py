@@ -4,7 +4,7 @@ Conventions
 -----------
 * Samples are mono float32, 0 dB full scale is 1; a part stays below `PEAK`.
 * Levels are balanced so that all parts at 0 dB make a sensible mix: at mezzo forte a section is at
-  -24 LUFS, one note of an accompaniment a third of that power and less.
+  -24 LUFS, one note of an accompaniment at -30, or at -27 where it is struck and dies away.
 """
 
 from __future__ import annotations

@@ -17,20 +17,19 @@ from numpy.typing import NDArray
 
 from retune.voice.curves import Curve, blocks
 from retune.voice.loudness import gain_db, levelled
-from retune.voice.phrasing import Sung
+from retune.voice.phrasing import Sung, glide
 from retune.voice.spectrum import HIGHEST_HZ
 from retune.voice.tone import Samples, Tone, add_tone
 from retune.voice.wavetable import Table
 
 Floats = NDArray[np.float64]
 
-LEVEL = -24.0
-"""Loudness of a tone at mezzo forte, at its start, in LUFS."""
+SUSTAINED_LEVEL, STRUCK_LEVEL = -24.0, -21.0
+"""Loudness of a tone at mezzo forte in LUFS; of a struck one at its start."""
 
 # Seconds.
 ATTACK, RELEASE = 0.04, 0.09
 STRIKE, DAMPING = 0.004, 0.12
-GLIDE = 0.04
 
 _CORNER_HZ, _HAMMER_HZ = 1_500.0, 2_500.0
 _STRUCK_AT = 1.0 / 7.3
@@ -82,11 +81,7 @@ def strike(out: Samples, sung: Sung, rate: int, gain: float) -> None:
 def _pitch(sung: Sung, rate: int) -> Curve:
     """The heights of a note; where a held note moves, it glides."""
     pitch = Curve([sung.start], [sung.path[0][1]])
-    for place in range(1, len(sung.path)):
-        at, height = sung.path[place]
-        end = sung.path[place + 1][0] if place + 1 < len(sung.path) else sung.stop
-        pitch.to(at, sung.path[place - 1][1])
-        pitch.to(at + min(round(GLIDE * rate), (end - at) // 2), height)
+    glide(pitch, sung, rate)
     return pitch
 
 
@@ -98,7 +93,7 @@ def _partials(hz: float) -> Floats:
 def _sustained(hz: float) -> Table:
     number = _partials(hz)
     amplitudes = 1.0 / number / (1.0 + (number * hz / _CORNER_HZ) ** 2)
-    return Table.of(levelled(amplitudes, hz, LEVEL))
+    return Table.of(levelled(amplitudes, hz, SUSTAINED_LEVEL))
 
 
 @lru_cache(maxsize=96)
@@ -106,6 +101,7 @@ def _struck(hz: float) -> tuple[Table, Table]:
     """The part that lasts and the part that dies away fast."""
     number = _partials(hz)
     amplitudes = np.abs(np.sin(np.pi * number * _STRUCK_AT)) / number
-    amplitudes = levelled(amplitudes / (1.0 + (number * hz / _HAMMER_HZ) ** 2), hz, LEVEL)
+    amplitudes /= 1.0 + (number * hz / _HAMMER_HZ) ** 2
+    amplitudes = levelled(amplitudes, hz, STRUCK_LEVEL)
     lasting = 1.0 / (1.0 + (number / _BRIGHT) ** 2)
     return Table.of(amplitudes * lasting), Table.of(amplitudes * (1.0 - lasting))
