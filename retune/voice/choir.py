@@ -140,7 +140,6 @@ def section(options: SoundOptions, part: int, rate: int) -> list[Singer]:
         return [Singer(swing=swing, swings=VIBRATO_HZ)]
     draw = np.random.default_rng([part, count])
     cents = draw.standard_normal(count)
-    cents -= cents.mean()
     cents *= options.scatter_cents / cents.std()
     ratios = 2.0 ** (cents / 1200.0)
     ratios /= ratios.mean()

@@ -144,6 +144,14 @@ def test_spectrum_is_source_times_tract_up_to_ten_kilohertz() -> None:
     assert found / harmonics(1.1, 90) == pytest.approx(transfer(at, vowel))
 
 
+def test_high_pitches_carry_the_first_formant_along() -> None:
+    # Sung as it stands, /u/ (F1 325 Hz) would lose its fundamental on A5: two octaves above a
+    # resonance the gain falls by 12 dB an octave.
+    vowel = formants(VoiceType.SOPRANO, "u")
+    gain = spectrum(880.0, vowel, 1.1)[0] / harmonics(1.1, 1)[0]
+    assert gain > 5.0 > transfer(np.array([880.0]), vowel)[0]
+
+
 def test_weighting_is_the_one_of_the_loudness_meter() -> None:
     # ITU-R BS.1770, as pyloudnorm has it.
     hz = np.array([40.0, 100.0, 440.0, 1500.0, 3000.0, 8000.0])
