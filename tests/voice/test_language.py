@@ -210,6 +210,11 @@ def test_any_text_gives_a_vowel_for_every_note(written: list[str], language: str
     assert set(found) <= set(VOWELS)
 
 
+@pytest.mark.parametrize("language", LANGUAGES)
+def test_a_hyphen_after_every_note(language: str) -> None:
+    assert len(vowels(["love-"] * 3000, language)) == 3000
+
+
 # The invented words of the project's own scores, as their words are commonly sung (no source).
 @pytest.mark.parametrize(
     ("piece", "language", "part", "ipa"),

@@ -15,6 +15,8 @@ _HYPHENS = "\u2010\u2011\u00ad\u2013-"
 _APOSTROPHES = str.maketrans(dict.fromkeys("’ʼ‘`´′", "'"))
 _LIGATURES = str.maketrans({"æ": "ae", "ǽ": "ae", "œ": "oe", "ﬁ": "fi", "ﬂ": "fl"})
 _ELISIONS = re.compile(r"[\s_\u203f\u2040\u035c]+")  # \s holds the no-break spaces
+_MOST_SYLLABLES = 24  # no word has more; a part with a hyphen after every note is cut there
+_MOST_LETTERS = 40  # of one syllable, or of a word set whole to one note
 _LOOSE_HYPHEN = re.compile(rf"\s+([{_HYPHENS}]+)$")
 _CLOSING = ".,;:!?\"'”’»)"
 _ELIDED = re.compile(r"\w['’]\W*$")  # a letter left out inside a word: "ew'-ge"
@@ -48,14 +50,15 @@ def words_of(lyrics: Sequence[str]) -> list[Word]:
     for note, lyric in enumerate(lyrics):
         tight = _LOOSE_HYPHEN.sub(r"\1", unicodedata.normalize("NFC", lyric))
         for piece in _ELISIONS.split(tight):
-            text = letters(piece)
+            text = letters(piece)[:_MOST_LETTERS]
             if not text:
                 continue
             hyphened = piece.rstrip(_CLOSING).endswith(tuple(_HYPHENS))
             if hyphened and _ELIDED.search(piece):
                 text += "'"
-            if words and (joined or piece[0] in _HYPHENS):
-                last = words[-1]
+            last = words[-1] if words else None
+            goes_on = joined or piece[0] in _HYPHENS
+            if last and goes_on and len(last.notes) < _MOST_SYLLABLES:
                 words[-1] = Word((*last.syllables, text), (*last.notes, note))
             else:
                 words.append(Word((text,), (note,)))
