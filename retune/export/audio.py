@@ -86,8 +86,7 @@ class AudioExporter:
         for take in takes:
             if not take.tuned.score.notes:
                 raise OutputError("there is no note to sound", Place(take.tuned.score.file))
-        stems = Stems(_player(options))
-        stems.will_play(takes)
+        stems = Stems(takes, _player(options))
         for take in takes:
             yield LateFile(_file_name(take, options.format), _renderer(take, stems, options))
 

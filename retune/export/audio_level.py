@@ -15,6 +15,9 @@ PEAK_DB = -1.0
 
 _FADE_IN, _FADE_OUT = 0.02, 0.05
 _BLOCK = 64
+_ATTEMPTS, _SPARE_DB = 4, 0.05
+"""Limiting moves the peaks between samples a little; what it leaves is turned down as a whole."""
+
 _REACH = 12
 """Blocks before and after a peak over which the gain moves: 17 ms at 44.1 kHz."""
 
@@ -45,10 +48,13 @@ def levelled(sound: Sound, rate: int, lufs: float, sides: bool = False) -> Sound
     measured = integrated_lufs(sound, rate)
     if math.isfinite(measured):
         sound *= np.float32(10.0 ** ((lufs - measured) / 20.0))
-    for _ in range(3):
-        if true_peak_db(sound, rate) <= PEAK_DB:
-            break
-        _limit(sound)
+    for _ in range(_ATTEMPTS):
+        peak = true_peak_db(sound, rate)
+        if peak <= PEAK_DB:
+            return sound
+        highest = max(float(sound.max()), -float(sound.min()))
+        _limit(sound, highest * 10.0 ** ((PEAK_DB - _SPARE_DB - peak) / 20.0))
+    sound *= np.float32(10.0 ** (min(PEAK_DB - true_peak_db(sound, rate), 0.0) / 20.0))
     return sound
 
 
@@ -67,13 +73,12 @@ def _fade(sound: Sound, rate: int) -> None:
         sound[place][:frames] *= ramp[:, None].astype(np.float32)
 
 
-def _limit(sound: Sound) -> None:
-    """Turn the gain down around peaks: smoothly, and far enough at each of them.
+def _limit(sound: Sound, ceiling: float) -> None:
+    """Turn the gain down around peaks: smoothly, and so far that no sample passes the ceiling.
 
     A block's gain is the least that any block within reach needs; the mean of these over the
     same reach is smooth, and at no block above what that block needs.
     """
-    ceiling = 10.0 ** ((PEAK_DB - 0.3) / 20.0)
     blocks = -(-len(sound) // _BLOCK)
     padded = np.zeros(blocks * _BLOCK, np.float32)
     padded[: len(sound)] = np.abs(sound).max(axis=1)

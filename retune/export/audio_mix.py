@@ -37,31 +37,29 @@ class _Stem:
 
 
 class Stems:
-    """The sounds of all parts of a run's takes, each made when it is first wanted.
+    """The sounds of all parts of a run's takes, made when the first of them is wanted.
 
     Takes share their parts: what sounds alike is synthesised once.
     """
 
-    def __init__(self, player: Player) -> None:
+    def __init__(self, takes: Iterable[Take], player: Player) -> None:
         self._player = player
         self._made: dict[Hashable, _Stem] = {}
-        self._wanted: dict[Hashable, tuple[TunedScore, int]] = {}
+        self._wanted = {
+            _key(take.played, part): (take.played, part)
+            for take in takes
+            for part in _sounding(take)
+        }
         self._lock = Lock()
 
-    def will_play(self, takes: Iterable[Take]) -> None:
-        """Say which takes will be mixed, so that their parts can be made side by side."""
-        for take in takes:
-            for part in _sounding(take):
-                self._wanted.setdefault(_key(take.played, part), (take.played, part))
-
     def get(self, played: TunedScore, part: int) -> _Stem:
-        """One part's sound."""
+        """The sound of one part of a take."""
         with self._lock:
             if self._wanted:
                 with ThreadPoolExecutor(_THREADS) as pool:
                     made = pool.map(self._make, self._wanted.values())
                     self._made.update(zip(self._wanted, made, strict=True))
-                self._wanted.clear()
+                self._wanted = {}
         return self._made[_key(played, part)]
 
     def _make(self, wish: tuple[TunedScore, int]) -> _Stem:

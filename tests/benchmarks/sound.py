@@ -75,9 +75,8 @@ def stages() -> dict[str, float]:
     tuned = retuned(PIECE, str(PIECE), ReadOptions(), Policy())
     takes = learning_tracks(tuned, TrackOptions(loops=int(LOOPS)))
     spent["read and tune"] = clock() - begun
-    stems = Stems(lambda played, part: stem(played, part, SoundOptions(), RATE))
     begun = clock()
-    stems.will_play(takes)
+    stems = Stems(takes, lambda played, part: stem(played, part, SoundOptions(), RATE))
     mixed(takes[0], stems)
     spent["synthesis"] = clock() - begun
     anew = 0.0
