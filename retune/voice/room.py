@@ -41,7 +41,8 @@ def in_room(samples: NDArray[np.float32], rate: int, room: Room) -> NDArray[np.f
     from scipy.signal import oaconvolve
 
     wet = oaconvolve(samples, _response(room, rate), axes=0)[: len(samples)]
-    return samples + wet.astype(np.float32)
+    heard: NDArray[np.float32] = samples + wet.astype(np.float32)
+    return heard
 
 
 def _response(room: Room, rate: int) -> NDArray[np.float32]:
