@@ -84,7 +84,7 @@ BAD = {
 @pytest.mark.parametrize("name", BAD)
 def test_bad_scores_end_in_one_clear_line(run: Run, name: str, tmp_path: Path) -> None:
     (tmp_path / name).write_bytes(BAD[name])
-    done = run("make", tmp_path / name, "-o", tmp_path / "out")
+    done = run("make", tmp_path / name, "-o", tmp_path / "out", "--audio", "none")
     usable = name in ("huge-number.musicxml", "long-number.musicxml", "zero-divisions.musicxml")
     assert done.code == 1 or (usable and done.code == 0), done.err
     if done.code:
@@ -118,6 +118,20 @@ EXPORT = ("export", "{hymn}", "-o", "{out}", "--to", "midi", "--set")
         ([*EXPORT, "scala.tables=2"], "scala"),
         (["export", "{hymn}", "--to", "notes", "-o", "-"], "one file"),
         (["make", "-"], "-o"),
+        (["tracks", "-"], "-o"),
+        (["tracks", "{hymn}", "-o", "{out}", "--part", "Sopran"], "Soprano"),
+        (["tracks", "{hymn}", "-o", "{out}", "--drone", "H"], "tonic, root"),
+        (["tracks", "{hymn}", "-o", "{out}", "--bars", "900"], "900"),
+        (["tracks", "{hymn}", "-o", "{out}", "--compare", "Q"], "no bar"),
+        (["tracks", "{hymn}", "-o", "{out}", "--vowel", "ah"], "neutral"),
+        (["tracks", "{hymn}", "-o", "{out}", "--language", "germn"], "german"),
+        (["tracks", "{hymn}", "-o", "{out}", "--audio", "aac"], "mp3"),
+        (["tracks", "{hymn}", "-o", "{out}", "--audio", "none", "--vowel", "a"], "--vowel"),
+        (["tracks", "{hymn}", "-o", "{out}", "--others", "3"], "--others"),
+        (["tracks", "{hymn}", "-o", "{out}", "--count-in", "99"], "--count-in"),
+        (["tracks", "{hymn}", "-o", "{out}", "--accompaniment-level", "loud"], "loud"),
+        (["tracks", "{hymn}", "-o", "{out}", "--set", "audio.singers=99"], "singers"),
+        (["tracks", "{hymn}", "-o", "{out}", "--set", "scala.tables=2"], "scala"),
         (["sing"], "sing"),
     ],
 )  # fmt: skip
@@ -164,7 +178,7 @@ def test_full_disk_leaves_nothing(
         raise OSError(errno.ENOSPC, "No space left on device")
 
     monkeypatch.setattr(os, "fsync", full)
-    done = run("make", hymn, "-o", tmp_path / "out")
+    done = run("make", hymn, "-o", tmp_path / "out", "--audio", "none")
     assert done.code == 1
     assert "space" in done.err.lower()
     assert tree(tmp_path) == set()
@@ -180,7 +194,7 @@ def test_interrupt_cleans_up(hymn: Path, tmp_path: Path, sign: signal.Signals) -
         "    time.sleep(30)\n"
         "pathlib.Path.rename = slow\n"
         "from retune.cli import main\n"
-        "main(['make', sys.argv[1], '-o', sys.argv[3]])\n"
+        "main(['make', sys.argv[1], '-o', sys.argv[3], '--audio', 'none'])\n"
     )
     ready, out = tmp_path / "ready", tmp_path / "out"
     process = subprocess.Popen(

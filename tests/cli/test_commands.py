@@ -17,7 +17,7 @@ SCORES = sorted([*FIXTURES.glob("*.musicxml"), *FIXTURES.glob("*.mxl")])
 
 @pytest.mark.parametrize("score", SCORES, ids=lambda p: p.name)
 def test_make_writes_the_folder_of_the_design(run: Run, score: Path, tmp_path: Path) -> None:
-    done = run("make", score, "-o", tmp_path / "out")
+    done = run("make", score, "-o", tmp_path / "out", "--audio", "none")
     assert done.code == 0, done.err
     files, name = tree(tmp_path / "out"), score.stem
     assert {
@@ -36,20 +36,20 @@ def test_make_writes_the_folder_of_the_design(run: Run, score: Path, tmp_path: P
 def test_make_without_o_writes_beside_the_score(run: Run, hymn: Path, tmp_path: Path) -> None:
     score = tmp_path / "my hymn.musicxml"
     score.write_bytes(hymn.read_bytes())
-    assert run("make", score).code == 0
+    assert run("make", score, "--audio", "none").code == 0
     assert (tmp_path / "my hymn" / "midi" / "Full mix - my hymn.mid").is_file()
 
 
 def test_make_again_replaces_its_own_files_only(run: Run, hymn: Path, tmp_path: Path) -> None:
-    assert run("make", hymn, "-o", tmp_path).code == 0
+    assert run("make", hymn, "--audio", "none", "-o", tmp_path).code == 0
     before = tree(tmp_path)
-    assert run("make", hymn, "-o", tmp_path, "--set", "scala.tables=3").code == 0
+    assert run("make", hymn, "--audio", "none", "-o", tmp_path, "--set", "scala.tables=3").code == 0
     assert len([name for name in tree(tmp_path) if name.endswith(".scl")]) == 4
-    assert run("make", hymn, "-o", tmp_path).code == 0
+    assert run("make", hymn, "--audio", "none", "-o", tmp_path).code == 0
     assert tree(tmp_path) == before
     note_list = tmp_path / "notes" / "harbour-hymn.notes.csv"
     note_list.write_text("mine now")
-    refused = run("make", hymn, "-o", tmp_path)
+    refused = run("make", hymn, "--audio", "none", "-o", tmp_path)
     assert refused.code == 1
     assert "harbour-hymn.notes.csv" in refused.err
     assert note_list.read_text() == "mine now"
@@ -130,7 +130,7 @@ def test_exporters_lists_options(run: Run) -> None:
     assert max(len(line) for line in done.out.splitlines()) <= 80
 
 
-@pytest.mark.parametrize("command", ["make", "show", "export", "exporters"])
+@pytest.mark.parametrize("command", ["make", "tracks", "show", "export", "exporters"])
 def test_help_has_examples(run: Run, command: str) -> None:
     done = run(command, "--help")
     assert done.code == 0
