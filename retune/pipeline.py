@@ -42,6 +42,9 @@ def retuned(source: Path | bytes, name: str, reading: ReadOptions, policy: Polic
         score = read_bytes(source, name, reading)
     else:
         score = read(source, reading)
+    if policy.tonic is not None:
+        # The user names it as it stands in the score.
+        policy = replace(policy, tonic=score.transposition.pitch_class(policy.tonic))
     return tune(score, analyse(score, policy.tonic), policy)
 
 

@@ -7,10 +7,29 @@ from typing import Any
 import click
 
 from retune.cli.stacking import gathered, stacked
+from retune.errors import WishError
 from retune.limits import Limits
 from retune.score.options import ReadOptions
+from retune.score.pace import Pace
+from retune.score.transpose import FURTHEST
 
 _MEGABYTE = 1024 * 1024
+
+
+class PaceType(click.ParamType[Any]):
+    """A share of the score's tempo, or beats a minute."""
+
+    name = "tempo"
+
+    def convert(self, value: Any, param: click.Parameter | None, ctx: click.Context | None) -> Pace:
+        """A pace from its text."""
+        if isinstance(value, Pace):
+            return value
+        try:
+            return Pace.parse(value)
+        except WishError as error:
+            self.fail(f"{error.what}. {error.hint}.", param, ctx)
+
 
 _READING = stacked(
     click.option(
@@ -24,6 +43,19 @@ _READING = stacked(
     ),
     click.option(
         "--fermatas/--no-fermatas", default=True, show_default=True, help="Hold the fermatas."
+    ),
+    click.option(
+        "--transpose",
+        type=click.IntRange(-FURTHEST, FURTHEST),
+        metavar="SEMITONES",
+        default=0,
+        help="Move everything up, or down with -2.",
+    ),
+    click.option(
+        "--tempo",
+        type=PaceType(),
+        metavar="PERCENT%|BEATS",
+        help="80% of the score's tempo, or steadily 92 beats a minute.",
     ),
     click.option(
         "--piece", type=click.IntRange(1), metavar="N", help="Which piece of a file with several."
@@ -58,6 +90,8 @@ _READING_NAMES = (
     "accompaniment",
     "repeats",
     "fermatas",
+    "transpose",
+    "tempo",
     "piece",
     "max_megabytes",
     "max_notes",
@@ -76,6 +110,8 @@ def _reading(wishes: dict[str, Any]) -> ReadOptions:
         fermatas=wishes["fermatas"],
         accompaniment=wishes["accompaniment"],
         piece=wishes["piece"],
+        transpose=wishes["transpose"],
+        tempo=wishes["tempo"] or Pace(),
         limits=limits,
     )
 

@@ -21,6 +21,8 @@ from retune.tuning.model import TunedScore
 
 RATE = 44100
 _THREADS = 2
+_BLOCK = 1 << 16
+"""Frames added at a time, so that they stay in the processor's cache."""
 
 Sound = NDArray[np.float32]
 Player = Callable[[TunedScore, int], Sound]
@@ -88,16 +90,16 @@ def mixed(take: Take, stems: Stems) -> Sound:
     """All parts of a take at their levels and places, not yet levelled."""
     found = [(stems.get(take.played, part), take.strip(part)) for part in _sounding(take)]
     frames = max((stem.frames for stem, _ in found), default=0)
-    mix = np.zeros((2, frames), np.float32)
+    mix = np.zeros((frames, 2), np.float32)
     for stem, strip in found:
         assert strip is not None
         gain = 10.0 ** (strip.gain_db / 20.0)
-        for channel, share in zip(mix, panned(strip.pan), strict=True):
-            if share:
-                channel[stem.start : stem.start + len(stem.sound)] += stem.sound * np.float32(
-                    gain * share
-                )
-    return np.ascontiguousarray(mix.T)
+        shares = np.array([gain * share for share in panned(strip.pan)], np.float32)
+        for begin in range(0, len(stem.sound), _BLOCK):
+            block = stem.sound[begin : begin + _BLOCK]
+            at = stem.start + begin
+            mix[at : at + len(block)] += block[:, None] * shares
+    return mix
 
 
 def panned(place: float) -> tuple[float, float]:

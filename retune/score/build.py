@@ -71,7 +71,7 @@ def _built(written: WrittenScore, stem: str, file: str | None, options: ReadOpti
         frames, _notes_in_bars(lines, frames), options.limits.max_notes, ledger, options.repeats
     )
     fermatas = fermata_spans(written, frames) if options.fermatas else [()] * len(frames)
-    tempo = tempo_map(written, frames, steps, fermatas, ledger)
+    tempo = tempo_map(written, frames, steps, fermatas, ledger, options.tempo)
     bars = _bars(frames, steps)
     _check_time(bars, tempo, options.limits.max_seconds)
     notes = sounding_notes(written, frames, steps, lines, ledger)

@@ -115,6 +115,17 @@ class Note:
         return self.onset + self.duration + self.stolen
 
 
+def counted_beat(metre: tuple[int, int]) -> Fraction:
+    """One beat of a metre as it is counted aloud, in quarter notes: three eighths in 6/8.
+
+    >>> counted_beat((6, 8)), counted_beat((3, 4))
+    (Fraction(3, 2), Fraction(1, 1))
+    """
+    beats, unit = metre
+    compound = unit >= 8 and beats % 3 == 0 and beats > 3
+    return Fraction(12 if compound else 4, unit)
+
+
 @dataclass(frozen=True, slots=True)
 class Bar:
     """One bar as played.
@@ -148,14 +159,24 @@ class Bar:
     @property
     def counted_beat(self) -> Fraction:
         """One beat as it is counted aloud, in quarter notes: three eighths in 6/8."""
-        beats, unit = self.metre
-        compound = unit >= 8 and beats % 3 == 0 and beats > 3
-        return self.beat_length * 3 if compound else self.beat_length
+        return counted_beat(self.metre)
 
     @property
     def full_length(self) -> Fraction:
         """A full bar of this metre, in quarter notes, however long this one is."""
         return self.beat_length * self.metre[0]
+
+
+@dataclass(frozen=True, slots=True)
+class Transposition:
+    """An interval: semitones, and its place on the line of fifths, which spells it."""
+
+    semitones: int = 0
+    fifths: int = 0
+
+    def pitch_class(self, pitch: PitchClass) -> PitchClass:
+        """A pitch class moved by the interval."""
+        return PitchClass.from_fifths(pitch.fifths + self.fifths)
 
 
 @dataclass(frozen=True, slots=True)
@@ -174,6 +195,8 @@ class Score:
 
     Notes are sorted by onset, then part, then key. `stem` is the file's name without its
     ending, the NAME of all outputs; `left_out` names parts of the file that do not sound.
+    `transposition` is how far all of it was moved from where the file has it. `source` is the
+    file as it was read, for writing back into it.
     """
 
     stem: str
@@ -190,6 +213,8 @@ class Score:
     chord_symbols: tuple[ChordSymbol, ...] = ()
     left_out: tuple[str, ...] = ()
     findings: tuple[Finding, ...] = ()
+    transposition: Transposition = Transposition()
+    source: bytes = field(default=b"", repr=False, compare=False)
     _bar_onsets: tuple[Fraction, ...] = field(init=False, repr=False, compare=False)
 
     def __post_init__(self) -> None:

@@ -1,8 +1,5 @@
-"""Final names and voice types of the lines of a score.
-
-Ranges are those of harmony teaching for the four voices, S C4-G5, A G3-D5, T C3-G4, B E2-C4,
-with a few semitones of stretch (common practice; Kostka & Payne and Aldwell & Schachter agree,
-from memory).
+"""Final names and voice types of the lines of a score, by what they are called and where they
+lie: in the usual ranges with a few semitones of stretch.
 """
 
 from __future__ import annotations
@@ -16,17 +13,8 @@ from retune.score.ledger import Ledger
 from retune.score.lines import Line
 from retune.score.model import PartKind, VoiceType
 from retune.score.names import Label, Role, read_name
+from retune.score.ranges import RANGES
 from retune.score.voicewords import STANDARD_NAMES
-
-RANGES: dict[VoiceType, tuple[int, int]] = {
-    VoiceType.SOPRANO: (60, 79),
-    VoiceType.MEZZO: (57, 77),
-    VoiceType.ALTO: (55, 74),
-    VoiceType.TENOR: (48, 67),
-    VoiceType.BARITONE: (45, 65),
-    VoiceType.BASS: (40, 60),
-}
-"""Lowest and highest written key of each voice."""
 
 STRETCH = 4
 FOUR_VOICES = (VoiceType.SOPRANO, VoiceType.ALTO, VoiceType.TENOR, VoiceType.BASS)

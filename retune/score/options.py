@@ -5,6 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass, field
 
 from retune.limits import Limits
+from retune.score.pace import Pace
 
 
 @dataclass(frozen=True, slots=True)
@@ -24,6 +25,10 @@ class ReadOptions:
         The largest input that is accepted.
     piece : int or None
         Which piece of a file that holds several, from 1.
+    transpose : int
+        Semitones by which all is moved, see `transpose.FURTHEST`.
+    tempo : Pace
+        The score's own tempo, a share of it, or a steady one.
     """
 
     repeats: bool = True
@@ -31,3 +36,5 @@ class ReadOptions:
     accompaniment: tuple[str, ...] = ()
     limits: Limits = field(default_factory=Limits)
     piece: int | None = None
+    transpose: int = 0
+    tempo: Pace = field(default_factory=Pace)

@@ -7,13 +7,14 @@ from __future__ import annotations
 
 import re
 from collections.abc import Callable
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from pathlib import Path
 
 from retune.errors import LimitError, Place, RetuneError, UnreadableError, WishError
 from retune.score.build import build_score
 from retune.score.model import Score
 from retune.score.options import ReadOptions
+from retune.score.transpose import transposed
 from retune.written import WrittenScore
 
 SUFFIXES: dict[str, str] = {
@@ -55,7 +56,8 @@ def read_bytes(data: bytes, name: str, options: ReadOptions | None = None) -> Sc
         written = _written(data, name, options)
     except RetuneError as error:
         raise error.in_file(file) from error.__cause__
-    return build_score(written, stem=stem_of(name), file=file, options=options)
+    score = build_score(written, stem=stem_of(name), file=file, options=options)
+    return replace(transposed(score, options.transpose), source=data)
 
 
 def stem_of(name: str) -> str:

@@ -23,7 +23,9 @@ from retune.errors import Weight
 from retune.score.bars import Frame
 from retune.score.fermatas import STRETCH, Span
 from retune.score.ledger import Ledger
+from retune.score.model import counted_beat
 from retune.score.order import Step
+from retune.score.pace import Pace
 from retune.score.tempo import DEFAULT_QPM, TempoChange, TempoMap
 from retune.score.tempo_words import TempoWord, Turn, metronome_in, tempo_word
 from retune.written import Mark, MarkKind, WrittenScore
@@ -50,10 +52,15 @@ def tempo_map(
     steps: Sequence[Step],
     fermatas: Sequence[tuple[Span, ...]],
     ledger: Ledger,
+    pace: Pace,
 ) -> TempoMap:
     """The tempo of the piece as played; `fermatas` holds the stretched spans of each bar."""
     starts = list(accumulate((frame.length for frame in frames), initial=Fraction(0)))
-    curve = _curve(_events(written, frames, starts, ledger), starts, fermatas, ledger)
+    if pace.beats is not None:
+        curve = [(Fraction(0), pace.beats * _counted_beat(frames))]
+    else:
+        curve = _curve(_events(written, frames, starts, ledger), starts, fermatas, ledger)
+        curve = [(time, qpm * pace.share) for time, qpm in curve]
     bars = [
         list(_in_bar(curve, start, frame.length, spans))
         for start, frame, spans in zip(starts[:-1], frames, fermatas, strict=True)
@@ -66,6 +73,12 @@ def tempo_map(
                 changes.append(TempoChange(onset + inside, qpm))
         onset += frames[step.written].length
     return TempoMap(tuple(changes)) if changes else TempoMap()
+
+
+def _counted_beat(frames: Sequence[Frame]) -> Fraction:
+    """The beat that is counted in the first full bar, in quarter notes."""
+    full = next((frame for frame in frames if frame.begins == 0), frames[0])
+    return counted_beat(full.metre)
 
 
 def _events(

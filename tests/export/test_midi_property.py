@@ -51,7 +51,7 @@ PITCHES = [PitchClass.from_fifths((7 * chroma + 5) % 12 - 5) for chroma in range
 def scores(draw: st.DrawFn) -> TunedScore:
     count = draw(st.integers(1, 9))
     parts = [
-        Part(index, f"P{index}", draw(st.sampled_from([kind for kind in PartKind if kind is not PartKind.CLICK])), program=draw(PROGRAMS))
+        Part(index, f"P{index}", draw(st.sampled_from(PITCHED)), program=draw(PROGRAMS))
         for index in range(count)
     ]
     notes = [note for index in range(count) for note in draw(lines(index))]
@@ -62,6 +62,7 @@ def scores(draw: st.DrawFn) -> TunedScore:
     )
 
 
+PITCHED = [kind for kind in PartKind if kind is not PartKind.CLICK]
 PROGRAMS = st.sampled_from([None, 19])
 
 
