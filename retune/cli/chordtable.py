@@ -14,13 +14,11 @@ from fractions import Fraction
 
 import click
 
-from retune.harmony.model import Chord, Role
-from retune.harmony.symbols import chord_symbol
+from retune.harmony.model import Role
+from retune.harmony.symbols import doubtable_symbol
 from retune.score.model import Part
 from retune.tuning.model import Segment, TunedNote, TunedScore
-
-DOUBTFUL = 0.6
-"""Confidence up to which a root is marked with a question mark (our choice)."""
+from retune.tuning.sounding import sung_by_chord
 
 _BAR, _BEAT, _CHORD = 5, 6, 8
 _NUMBER = 3
@@ -68,21 +66,6 @@ def layout_for(parts: int, columns: int) -> Layout:
     return Layout(10, True, False, max(room // 10, 1))
 
 
-def cells_by_chord(tuned: TunedScore) -> list[dict[int, tuple[TunedNote, Segment]]]:
-    """For each chord, the note each part sings in it: its first chord tone, else its first."""
-    found: list[dict[int, tuple[TunedNote, Segment]]] = [{} for _ in tuned.harmony.chords]
-    for note in tuned.notes:
-        for segment in note.segments:
-            row, part = found[segment.chord], note.note.part
-            held = row.get(part)
-            better = held is not None and (
-                held[1].role is not Role.CHORD_TONE and segment.role is Role.CHORD_TONE
-            )
-            if held is None or better:
-                row[part] = (note, segment)
-    return found
-
-
 def _cell(note: TunedNote, segment: Segment) -> Cell:
     ratio = segment.ratio
     return Cell(
@@ -124,12 +107,6 @@ def _heading(tuned: TunedScore, parts: Sequence[int], layout: Layout, first: boo
     return click.style((left + "".join(names)).rstrip(), bold=True)
 
 
-def symbol_of(chord: Chord) -> str:
-    """The chord's symbol, with a question mark where its root is doubtful."""
-    symbol = chord_symbol(chord)
-    return f"{symbol}?" if symbol and chord.confidence <= DOUBTFUL else symbol
-
-
 def table(tuned: TunedScore, columns: int, wanted: range | None = None) -> Iterator[str]:
     """The chord table in lines no wider than `columns`.
 
@@ -141,18 +118,18 @@ def table(tuned: TunedScore, columns: int, wanted: range | None = None) -> Itera
     for index, group in enumerate(groups):
         yield _heading(tuned, group, layout, index == 0)
     shown_run, doubts, others = 1, False, False
-    for chord, row in zip(tuned.harmony.chords, cells_by_chord(tuned), strict=True):
+    for chord, row in zip(tuned.harmony.chords, sung_by_chord(tuned), strict=True):
         bar = score.bar_at(chord.onset)
         if chord.root is None or (wanted is not None and bar.index not in wanted):
             continue
         if bar.run != shown_run:
             shown_run = bar.run
             yield click.style(f" time {bar.run} through", dim=True)
-        doubts |= chord.confidence <= DOUBTFUL
+        doubts |= chord.doubtful
         others |= any(segment.role is not Role.CHORD_TONE for _, segment in row.values())
         beat = score.beat_at(chord.onset)
         left = f" {bar.number:<{_BAR}}{beat_text(beat):<{_BEAT}}"
-        symbol = click.style(f"{symbol_of(chord):<{_CHORD}}", bold=True)
+        symbol = click.style(f"{doubtable_symbol(chord):<{_CHORD}}", bold=True)
         for index, group in enumerate(groups):
             yield (left + symbol if index == 0 else " " * _MARGIN) + _cells(row, group, layout)
     yield from _legend(doubts, others, columns)

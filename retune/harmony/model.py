@@ -18,6 +18,9 @@ from fractions import Fraction
 
 from retune.pitch import PitchClass
 
+DOUBTFUL = 0.6
+"""Confidence up to which a root is marked as in doubt (our choice)."""
+
 
 class Quality(StrEnum):
     """Chord qualities, with the names that the note list prints."""
@@ -90,6 +93,11 @@ class Chord:
     confidence: float
     runner_up: tuple[PitchClass, Quality] | None = None
     added: tuple[Degree, ...] = ()
+
+    @property
+    def doubtful(self) -> bool:
+        """Whether the root is to be marked as in doubt."""
+        return self.root is not None and self.confidence <= DOUBTFUL
 
     @property
     def end(self) -> Fraction:

@@ -41,6 +41,11 @@ def chord_symbol(chord: Chord) -> str:
     return chord.root.name + _with_added(chord.quality, chord.added)
 
 
+def doubtable_symbol(chord: Chord) -> str:
+    """The chord's symbol, with a question mark where its root is in doubt."""
+    return f"{chord_symbol(chord)}?" if chord.doubtful else chord_symbol(chord)
+
+
 def _with_added(quality: Quality, added: tuple[Degree, ...]) -> str:
     """A suffix that tells the added tones, as they are usually written.
 
