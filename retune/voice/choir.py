@@ -92,7 +92,7 @@ def sing(
     rate: int,
 ) -> None:  # fmt: skip
     """Add a part, sung by a section, to samples."""
-    voice_type = tuned.score.parts[part].voice_type or _type_of(median_key(notes))
+    voice_type = tuned.score.parts[part].voice_type or type_of(median_key(notes))
     vowels = _vowels(tuned, part, notes, options)
     singers = section(options, part, rate)
     tracts = _tracts(options.singers)
@@ -171,7 +171,8 @@ def _tracts(count: int) -> tuple[float, ...]:
     return tuple(float(size) for size in np.linspace(1.0 - TRACTS, 1.0 + TRACTS, count))
 
 
-def _type_of(key: float) -> VoiceType:
+def type_of(key: float) -> VoiceType:
+    """The kind of voice that a line around a key is most likely for."""
     return next((kind for lowest, kind in _TYPES if key >= lowest), VoiceType.BASS)
 
 

@@ -13,7 +13,7 @@ from pathlib import Path
 import numpy as np
 import pytest
 
-from retune.adapters import soundfont
+from retune.adapters import soundfont_player
 from retune.adapters.soundfont import FontNote, render, require_soundfont
 from retune.errors import OutputError
 from retune.units import hz_of
@@ -73,7 +73,7 @@ def font_bytes() -> bytes:
 
 def player_is_there() -> bool:
     try:
-        soundfont._library()
+        soundfont_player.library()
     except OutputError:
         return False
     return True
