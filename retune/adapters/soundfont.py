@@ -1,42 +1,33 @@
 """Sound fonts through FluidSynth (pyfluidsynth), where both are installed.
 
-FluidSynth takes every pitch down to a whole cent and a bend for 127/128 of itself
-(`fluid_ct2hz_real` and the default modulator of its sources, 2.3 to 2.6); bends are sent so that
-the nearest whole cent sounds. What is rendered is thus up to half a cent off, besides what the
-font's own samples are.
+FluidSynth drops what is left of a cent of every pitch (`fluid_ct2hz_real` of its sources, 2.3 to
+2.6), whether it came by bend, by generator or by one of its tunings. Its rendering rate is a real
+number, though: a note rendered at a little less than the rate it is heard at sounds by exactly
+that ratio higher. So every note is rendered by itself, its whole cents by the player and its
+sixteenths of a cent by the rate, and added up here. No two notes share a channel, any number may
+sound at once, and each begins at its exact frame.
 """
 
 from __future__ import annotations
 
-import os
+import math
 from collections.abc import Iterator, Sequence
-from contextlib import contextmanager
-from dataclasses import dataclass, field
+from dataclasses import dataclass
+from itertools import groupby
 from pathlib import Path
-from types import ModuleType
-from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 
+from retune.adapters.soundfont_player import BLOCK, Player, player
 from retune.errors import OutputError, Place
 
-_INSTALL = (
-    "Install both: pip install 'retune-choir[soundfont]', and the library FluidSynth (Debian and "
-    "Ubuntu: apt install libfluidsynth3; macOS: brew install fluid-synth); or leave out the sound "
-    "font for the built-in voice"
-)
-_GAIN = 0.4
-_RELEASE_SECONDS = 0.6
-"""How long a released note is taken to sound on and to keep its channel."""
+_STEPS = 16
+"""Steps of a cent: every pitch of a note that does not move is within 1/32 cent."""
 
-_PERCUSSION = 9
-_CHANNELS = tuple(channel for channel in range(16) if channel != _PERCUSSION)
-_PERCUSSION_BANK = 128
-_BEND_CENTS = 200.0
-_CENTRE, _HIGHEST = 8192, 16383
 _GLIDE_SECONDS = 0.04
-_GLIDE_STEPS = 8
+_TAIL_BLOCKS = 64
+_LEAST_RATE, _HIGHEST_RATE = 8100, 96000
 
 Sound = NDArray[np.float32]
 
@@ -45,8 +36,8 @@ Sound = NDArray[np.float32]
 class FontNote:
     """One note to be played.
 
-    `start` and `stop` are seconds; `pitches` are (second, float MIDI key), ascending, the first
-    at `start`: a note may move while it sounds.
+    `start` and `stop` are seconds, `velocity` is 1 to 127; `pitches` are (second, float MIDI
+    key), ascending, the first at `start`: a note may move while it sounds.
     """
 
     start: float
@@ -54,21 +45,30 @@ class FontNote:
     velocity: int
     pitches: tuple[tuple[float, float], ...]
 
+    def __post_init__(self) -> None:
+        seconds = [second for second, _ in self.pitches]
+        if not seconds or seconds[0] != self.start or seconds != sorted(seconds):
+            raise ValueError("pitches must ascend in time from the start of the note")
+        if not 1 <= self.velocity <= 127 or not 0.0 <= self.start <= self.stop < math.inf:
+            raise ValueError("a note needs a velocity of 1 to 127, and a stop after its start")
 
-def require_soundfont(font: Path) -> None:
+
+def require_soundfont(path: Path) -> None:
     """Raise `OutputError` where the font cannot be read or nothing is there to play it."""
-    place = Place(str(font))
+    place = Place(str(path))
+    hint = "Give the path of an .sf2 file"
+    # A pipe would be waited for without end.
+    if path.exists() and not path.is_file():
+        raise OutputError("is no sound font", place, hint)
     try:
-        with font.open("rb") as stream:
+        with path.open("rb") as stream:
             head = stream.read(12)
     except OSError as error:
         reason = error.strerror or type(error).__name__
-        raise OutputError(
-            f"the sound font cannot be read: {reason}", place, "Give the path of an .sf2 file"
-        ) from error
+        raise OutputError(f"the sound font cannot be read: {reason}", place, hint) from error
     if head[:4] != b"RIFF" or head[8:] != b"sfbk":
-        raise OutputError("is no sound font", place, "Give an .sf2 file")
-    with _synth(font, 44100):
+        raise OutputError("is no sound font", place, hint)
+    with player(path, 44100.0):
         pass
 
 
@@ -85,162 +85,108 @@ def render(
     Parameters
     ----------
     notes : sequence of FontNote
-        At most fifteen that differ in their bend may sound at once.
+        In any order. Those that move are within half a cent, others within 1/32 cent, besides
+        what the font's own samples are.
     program : int
-        General MIDI program, from 0; with `percussion` a drum kit.
+        General MIDI program, from 0; with `percussion` the drum kit of that number, whose notes
+        ring on by themselves.
     seconds : float
         Length of the sound; what rings on after it is cut off.
+    rate : int
+        Samples a second, 8100 to 96000.
 
     Returns
     -------
     ndarray, shape (ceil(seconds * rate),)
-        Mono, without reverberation and chorus.
+        Mono, without reverberation and chorus. Where more notes sound at once than full scale
+        holds, the whole is turned down to it.
+
+    Raises
+    ------
+    OutputError
+        The font cannot be loaded or has no such program, or nothing is there to play it.
     """
-    with _synth(font, rate) as (synth, number):
-        for channel in _CHANNELS:
-            synth.program_select(channel, number, 0, program)
-            synth.cc(channel, 7, 127)
-        if percussion:
-            synth.program_select(_PERCUSSION, number, _PERCUSSION_BANK, 0)
-            synth.cc(_PERCUSSION, 7, 127)
-        events = _events(notes, rate, percussion)
-        return _played(synth, events, int(np.ceil(seconds * rate)))
+    if not _LEAST_RATE <= rate <= _HIGHEST_RATE:
+        raise ValueError(f"{rate} samples a second; {_LEAST_RATE} to {_HIGHEST_RATE} are rendered")
+    out = np.zeros(math.ceil(seconds * rate), np.float32)
+    steps = [(0 if percussion else _step(note), note) for note in notes]
+    steps.sort(key=lambda one: (one[0], one[1].start, one[1].pitches, one[1].velocity))
+    for step, group in groupby(steps, key=lambda one: one[0]):
+        with player(font, rate * 2.0 ** (-step / (1200.0 * _STEPS))) as playing:
+            playing.choose(program, percussion)
+            for _, note in group:
+                _add(out, playing, note, step, rate, percussion)
+    peak = max(float(out.max(initial=0.0)), -float(out.min(initial=0.0)))
+    if peak > 1.0:
+        out /= np.float32(peak * (1.0 + 1e-6))
+    return out
 
 
-def _library() -> ModuleType:
-    try:
-        import fluidsynth
-    # Without the C library the package raises whatever its search ends with.
-    except Exception as error:
-        raise OutputError("no FluidSynth is there to play a sound font", hint=_INSTALL) from error
-    return fluidsynth  # type: ignore[no-any-return]
+def _step(note: FontNote) -> int:
+    """The step between whole cents that suits a note's pitches best, each by how long it lasts."""
+    ends = [*(second for second, _ in note.pitches[1:]), note.stop]
+    lasting = [
+        (max(end - begin, 0.0) + 1e-9, 100.0 * key)
+        for (begin, key), end in zip(note.pitches, ends, strict=True)
+    ]
+
+    def error(step: int) -> float:
+        offs = ((time, cents - step / _STEPS) for time, cents in lasting)
+        return sum(time * (off - round(off)) ** 2 for time, off in offs)
+
+    return min(range(_STEPS), key=error)
 
 
-@contextmanager
-def _synth(font: Path, rate: int) -> Iterator[tuple[Any, int]]:
-    """A synth with the font loaded; its C library's words about the font are kept quiet."""
-    library = _library()
-    with _quiet():
-        synth = library.Synth(gain=_GAIN, samplerate=float(rate))
-        try:
-            for name in ("synth.reverb.active", "synth.chorus.active"):
-                synth.setting(name, 0)
-            number = synth.sfload(str(font))
-            if number < 0:
-                raise OutputError(
-                    "the sound font cannot be loaded", Place(str(font)), "Try another .sf2 file"
-                )
-            yield synth, number
-        finally:
-            synth.delete()
+def _add(
+    out: Sound, playing: Player, note: FontNote, step: int, rate: int, percussion: bool
+) -> None:
+    """Render one note and add it to what sounds."""
+    begin = round(note.start * rate)
+    room = -(-(len(out) - begin) // BLOCK)
+    if room <= 0:
+        return
+    key = min(max(round(note.pitches[0][1]), 0), 127)
+    stop = max(round((note.stop - note.start) * rate / BLOCK), 1)
+    at = 0
+
+    def reach(block: int) -> None:
+        nonlocal at
+        block = min(block, room)
+        if block > at:
+            first = begin + at * BLOCK
+            place = out[first : first + (block - at) * BLOCK]
+            place += playing.blocks(block - at)[: len(place)]
+            at = block
+
+    if not percussion:
+        playing.tune(_cents(note.pitches[0][1], key, step))
+    playing.on(key, note.velocity)
+    if not percussion:
+        for block, pitch in _moves(note, rate):
+            if block < stop:
+                reach(block)
+                playing.tune(_cents(pitch, key, step))
+        reach(stop)
+        playing.off(key)
+    while at < room and playing.sounding():
+        reach(at + _TAIL_BLOCKS)
+    playing.hush()
 
 
-@contextmanager
-def _quiet() -> Iterator[None]:
-    """Send what a C library writes to standard error nowhere."""
-    kept = os.dup(2)
-    nowhere = os.open(os.devnull, os.O_WRONLY)
-    try:
-        os.dup2(nowhere, 2)
-        yield
-    finally:
-        os.dup2(kept, 2)
-        os.close(kept)
-        os.close(nowhere)
+def _cents(pitch: float, key: int, step: int) -> int:
+    """Whole cents above a key, where the rate gives the step."""
+    return round(100.0 * (pitch - key) - step / _STEPS)
 
 
-@dataclass(frozen=True, slots=True, order=True)
-class _Event:
-    """What happens at a frame: note-offs before bends before note-ons."""
-
-    frame: int
-    rank: int
-    channel: int
-    first: int
-    second: int = 0
-
-
-_OFF, _BEND, _ON = range(3)
-
-
-@dataclass(slots=True)
-class _Channel:
-    """What a channel plays: its bend, and until when each of its keys is heard."""
-
-    number: int
-    bend: int = _CENTRE
-    moving: bool = False
-    keys: dict[int, float] = field(default_factory=dict)
-
-    def heard_until(self) -> float:
-        """Second in which its last release has died away."""
-        return max(self.keys.values(), default=-1.0)
-
-    def suits(self, note: FontNote, key: int, bend: int) -> bool:
-        """Whether the note can sound here as things stand, beside what does."""
-        ringing = {k for k, end in self.keys.items() if end > note.start}
-        if not ringing:
-            return True
-        moves = len(note.pitches) > 1 or self.moving
-        return not moves and bend == self.bend and key not in ringing
-
-
-def _wheel(cents: float) -> int:
-    """The bend that makes FluidSynth sound the whole cent nearest to `cents`."""
-    sent = (round(cents) + 0.3) * 128.0 / 127.0
-    return min(max(_CENTRE + round(sent * 8192.0 / _BEND_CENTS), 0), _HIGHEST)
-
-
-def _events(notes: Sequence[FontNote], rate: int, percussion: bool) -> list[_Event]:
-    events: list[_Event] = []
-    channels = [_Channel(number) for number in _CHANNELS]
-    for note in sorted(notes, key=lambda one: one.start):
-        on, off = round(note.start * rate), max(round(note.stop * rate), 1)
-        key = min(max(round(note.pitches[0][1]), 0), 127)
-        if percussion:
-            events += [_Event(on, _ON, _PERCUSSION, key, note.velocity)]
-            continue
-        bend = _wheel(100.0 * (note.pitches[0][1] - key))
-        place = min(channels, key=lambda one: (not one.suits(note, key, bend), one.heard_until()))
-        place.keys = {k: end for k, end in place.keys.items() if end > note.start}
-        place.keys[key] = note.stop + _RELEASE_SECONDS
-        place.bend, place.moving = bend, len(note.pitches) > 1
-        events.append(_Event(on, _BEND, place.number, bend))
-        events.append(_Event(on, _ON, place.number, key, note.velocity))
-        events.append(_Event(max(off, on + 1), _OFF, place.number, key))
-        for second, pitch in _glides(note):
-            wheel = _wheel(100.0 * (pitch - key))
-            events.append(_Event(round(second * rate), _BEND, place.number, wheel))
-    return sorted(events)
-
-
-def _glides(note: FontNote) -> Iterator[tuple[float, float]]:
-    """Steps of every move of a note after its start."""
+def _moves(note: FontNote, rate: int) -> Iterator[tuple[int, float]]:
+    """Pitches of a note after its start by the block they begin at, ascending: every change is
+    a straight glide of at most `_GLIDE_SECONDS`."""
     ends = [*(second for second, _ in note.pitches[1:]), note.stop]
     for index in range(1, len(note.pitches)):
-        begin, pitch = note.pitches[index]
+        second, pitch = note.pitches[index]
         before = note.pitches[index - 1][1]
-        span = min(_GLIDE_SECONDS, (ends[index] - begin) / 2)
-        for step in range(1, _GLIDE_STEPS + 1):
-            share = step / _GLIDE_STEPS
-            yield begin + span * share, before + (pitch - before) * share
-
-
-def _played(synth: Any, events: Sequence[_Event], frames: int) -> Sound:
-    out = np.zeros(frames, np.float32)
-    at = 0
-    for event in [*events, _Event(frames, _OFF, -1, 0)]:
-        frame = min(event.frame, frames)
-        if frame > at:
-            stereo = synth.get_samples(frame - at).astype(np.float32).reshape(-1, 2)
-            out[at:frame] = stereo.mean(axis=1) / 32768.0
-            at = frame
-        if event.channel < 0:
-            break
-        if event.rank == _ON:
-            synth.noteon(event.channel, event.first, event.second)
-        elif event.rank == _BEND:
-            synth.pitch_bend(event.channel, event.first - _CENTRE)
-        else:
-            synth.noteoff(event.channel, event.first)
-    return out
+        span = min(_GLIDE_SECONDS, max(ends[index] - second, 0.0) / 2.0)
+        first = round((second - note.start) * rate / BLOCK)
+        steps = max(round(span * rate / BLOCK), 1)
+        for done in range(1, steps + 1):
+            yield first + done - 1, before + (pitch - before) * done / steps
