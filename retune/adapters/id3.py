@@ -25,9 +25,16 @@ def id3_header(
     language : str
         ISO 639-2 code of both, three letters.
 
+    Raises
+    ------
+    ValueError
+        Another language: whatever follows it would be read wrongly.
+
     >>> id3_header({"TIT2": "A"}).hex(" ")
     '49 44 33 03 00 00 00 00 00 0f 54 49 54 32 00 00 00 05 00 00 01 ff fe 41 00'
     """
+    if len(language) != 3 or not (language.isascii() and language.isalpha()):
+        raise ValueError(f"{language!r} is no ISO 639-2 code")
     frames = [_frame(name, _UTF16 + _text(text)) for name, text in texts.items() if text]
     for name, text in (("USLT", lyrics), ("COMM", comment)):
         if text:

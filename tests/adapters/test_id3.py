@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import pytest
+
 from retune.adapters.id3 import id3_header
 
 
@@ -37,3 +39,16 @@ def test_letters_beyond_the_basic_plane_and_lone_surrogates() -> None:
 
 def test_nothing_to_say_is_no_header() -> None:
     assert id3_header({"TIT2": ""}) == b""
+
+
+@pytest.mark.parametrize("language", ["", "de", "germ", "dëu", "1 3"])
+def test_languages_that_are_no_codes(language: str) -> None:
+    with pytest.raises(ValueError, match="ISO 639-2"):
+        id3_header({}, "words", language=language)
+
+
+def test_a_comment_by_hand() -> None:
+    # Content: encoding 1, language 3, empty description 2 + 2, text 2 + 4 bytes; frame 10 more.
+    assert id3_header({}, comment="hi", language="eng") == bytes.fromhex(
+        "494433 0300 00 00000018 434f4d4d 0000000e 0000 01 656e67 fffe 0000 fffe 6800 6900"
+    )
