@@ -21,6 +21,7 @@ ROWS: tuple[tuple[str, ...], ...] = (
     ("harmony",),
     ("tuning",),
     ("tracks", "voice"),
+    ("page",),
     ("export",),
     ("pipeline",),
     ("cli",),
@@ -40,6 +41,7 @@ DOORS = {
     "soundfile": {"adapters"},
     "pyloudnorm": {"adapters"},
     "fluidsynth": {"adapters"},
+    "verovio": {"adapters"},
 }
 
 MODULES = sorted(ROOT.rglob("*.py"))
