@@ -79,10 +79,11 @@ class Player:
         bank = _PERCUSSION_BANK if percussion else _MELODIC_BANK
         if self._synth.program_select(_CHANNEL, self._number, bank, program) != 0:
             missing = "no drum kit" if percussion else f"no program {program}, counted from 0"
+            without = "make no count-in and no click" if percussion else "use the built-in voice"
             raise OutputError(
                 f"the sound font has {missing}",
                 Place(str(self._font)),
-                "Give a General MIDI sound font, or leave it out for the built-in voice",
+                f"Give a General MIDI sound font, or {without}",
             )
         volume, most = 7, 127
         self._synth.cc(_CHANNEL, volume, most)
