@@ -32,8 +32,10 @@ def glyph_width(code: str) -> float:
 def text_width(text: str, size: float, *, bold: bool = False, italic: bool = False) -> float:
     """Width of a text in Times, in the units of `size`."""
     style = ("-bold" if bold else "") + ("-italic" if italic else "")
-    advances = _advances(f"text/Times{style}.xml")
-    return size * sum(advances.get(f"{ord(c):02X}", _EM / 2) for c in text) / _EM
+    styled, plain = _advances(f"text/Times{style}.xml"), _advances("text/Times.xml")
+    # Some styles lack letters, or give them no width; the plain ones are near enough.
+    codes = (f"{ord(c):02X}" for c in text)
+    return size * sum(styled.get(c) or plain.get(c) or _EM / 2 for c in codes) / _EM
 
 
 @cache

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, MutableMapping
 from typing import Protocol, cast
 
 from lxml import etree
@@ -18,7 +18,7 @@ class Node(Protocol):
 
     tag: str
     text: str | None
-    attrib: dict[str, str]
+    attrib: MutableMapping[str, str]
 
     def get(self, name: str, default: str) -> str: ...
     def set(self, name: str, value: str) -> None: ...

@@ -6,15 +6,16 @@ cents are added as a verse of their own, so that the engraver leaves room for th
 
 from __future__ import annotations
 
-from collections import defaultdict
 from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
 from fractions import Fraction
+from itertools import takewhile
 
 from retune.adapters.engraving_markup import Node, as_node, node, own_copy, serialised
 from retune.limits import Limits
 from retune.page.engrave_labels import Head, heads_of
-from retune.page.engrave_part import keep_only
+from retune.page.engrave_part import Bars, keep_only
+from retune.score.model import Part
 from retune.score.musicxml import noteheads
 from retune.score.musicxml.layout import read_layout
 from retune.score.musicxml.log import Log
@@ -22,9 +23,6 @@ from retune.tuning.model import TunedScore
 
 CENTS_VERSE = 900
 """Verses from this number on hold cents: rows from the top of a stack of noteheads."""
-
-BELOW = 50
-"""Added to the number of verses under a staff whose other voice has its cents above it."""
 
 _NAMED = frozenset({"part", "score-part", "score-instrument", "instrument"})
 _FOR_PAPER = ("defaults", "credit", "identification", "work", "movement-title")
@@ -89,11 +87,13 @@ def annotated(
         _plain(element)
     for source, element in named:
         element.set("id", ids[source])
-    _write_cents(tuned, heads, dict(named), part)
     if part is not None:
         keep_only(tuned, part, music, dict(named))
+    _write_cents(heads, dict(named), music)
     kept = [tuned.score.parts[part]] if part is not None else tuned.score.parts
     _keep_parts(root, music, {one.source for one in kept}, part is not None)
+    if part is not None:
+        _name(root, tuned.score.parts[part])
     if short_names:
         _shorten_names(root)
     by_name = {ids[source]: head for source, head in heads.items() if source in ids}
@@ -134,26 +134,46 @@ def _number(text: str | None) -> Fraction:
 
 
 def _write_cents(
-    tuned: TunedScore, heads: Mapping[str, Head], named: Mapping[str, Node], part: int | None
+    heads: Mapping[str, Head], named: Mapping[str, Node], music: Mapping[str, Bars]
 ) -> None:
-    """Add each label as a verse, to the first note of the chord that the notehead is in."""
-    stacks: dict[int, tuple[Node, list[tuple[Node, Head]]]] = {}
+    """Add each label as a verse, to the first note of the chord that its notehead is in.
+
+    Labels of a chord stand under each other as its heads do, those of a staff's lower voice
+    under those of its upper one.
+    """
+    stacks: dict[int, list[tuple[Node, Head]]] = {}
     for source, head in heads.items():
         element = named.get(source)
-        if element is not None and head.cents and part in (None, head.part):
-            first = _first_of_chord(element)
-            stacks.setdefault(id(first), (first, []))[1].append((element, head))
-    above = _sung_above(tuned) if part is None else set()
-    for first, stack in stacks.values():
+        if element is not None and head.cents:
+            stacks.setdefault(id(_first_of_chord(element)), []).append((element, head))
+    for stack in stacks.values():
         stack.sort(key=lambda entry: -_height(entry[0]))
-        for row, (_, head) in enumerate(stack):
-            up = head.part in above
-            number = CENTS_VERSE + row + (0 if up or not above else BELOW)
-            first.append(_verse(number, head.text, "above" if up else "below"))
+    for bars in music.values():
+        for _, body in bars:
+            _write_rows(body.findall("note"), stacks)
 
 
-def _verse(number: int, text: str, placement: str) -> Node:
-    verse = node("lyric", number=str(number), placement=placement)
+def _write_rows(notes: list[Node], stacks: Mapping[int, list[tuple[Node, Head]]]) -> None:
+    """Write the labels of one bar, each voice in rows of its own."""
+    heights: dict[tuple[str, str], int] = {}
+    for note in notes:
+        line = _line_of(note)
+        heights[line] = max(heights.get(line, 1), len(stacks.get(id(note), ())))
+    for note in notes:
+        staff, voice = _line_of(note)
+        before = takewhile((staff, voice).__ne__, heights)
+        above = sum(heights[line] for line in before if line[0] == staff)
+        for row, (_, head) in enumerate(stacks.get(id(note), ())):
+            note.append(_verse(CENTS_VERSE + above + row, head.text))
+
+
+def _line_of(note: Node) -> tuple[str, str]:
+    """Staff and voice of a note element."""
+    return note.findtext("staff") or "1", note.findtext("voice") or "1"
+
+
+def _verse(number: int, text: str) -> Node:
+    verse = node("lyric", number=str(number), placement="below")
     verse.append(node("syllabic", "single"))
     verse.append(node("text", text))
     return verse
@@ -175,25 +195,10 @@ def _height(element: Node) -> int:
     return 7 * int(_number(octave)) + "CDEFGAB".find(step.strip())
 
 
-def _sung_above(tuned: TunedScore) -> set[int]:
-    """Parts whose cents stand above their staff: the upper voice of a staff of several."""
-    staves: dict[tuple[str, int], dict[str, list[int]]] = defaultdict(dict)
-    for one in tuned.score.parts:
-        staves[one.source, one.staff].setdefault(one.voice, []).append(one.index)
-    return {
-        index
-        for voices in staves.values()
-        if len(voices) > 1
-        for index in next(iter(voices.values()))
-    }
-
-
 # --- parts ---------------------------------------------------------------------------------
 
 
-def _keep_parts(
-    root: Node, music: Mapping[str, list[tuple[Node, Node]]], kept: set[str], alone: bool
-) -> None:
+def _keep_parts(root: Node, music: Mapping[str, Bars], kept: set[str], alone: bool) -> None:
     """Make the score one by parts, with these parts only and without its paper."""
     for name in _FOR_PAPER:
         for child in root.findall(name):
@@ -263,11 +268,24 @@ def _encloses(entries: list[Node], index: int, names: list[str]) -> bool:
     return False
 
 
-def _shorten_names(root: Node) -> None:
+def _name(root: Node, part: Part) -> None:
+    """Give the only part its own name, where the file names a staff of several."""
     for entry in root.iter("score-part"):
-        short, name = entry.find("part-abbreviation"), entry.find("part-name")
-        if name is not None:
-            name.text = (short.text if short is not None else "") or (name.text or "")[:4]
-        for shown in ("part-name-display", "part-abbreviation-display"):
-            for display in entry.findall(shown):
-                entry.remove(display)
+        _rename(entry, part.name, part.abbreviation or part.name)
+
+
+def _shorten_names(root: Node) -> None:
+    """Abbreviated names at the first system too."""
+    for entry in root.iter("score-part"):
+        name, short = entry.findtext("part-name") or "", entry.findtext("part-abbreviation")
+        short = short or name[:4]
+        _rename(entry, short, short)
+
+
+def _rename(entry: Node, name: str, short: str) -> None:
+    """Set the printed names of a part, at the place that the schema gives them."""
+    for child in list(entry):
+        if child.tag.startswith(("part-name", "part-abbreviation")):
+            entry.remove(child)
+    entry.insert(0, node("part-name", name))
+    entry.insert(1, node("part-abbreviation", short))

@@ -45,6 +45,9 @@ def _settle(child: Node, body: Node, staff: str, voices: set[str], own: set[int]
             _make_silent(child, body)
         else:
             _drop(child, "staff")
+            for lyric in child.findall("lyric"):
+                # Hidden where it repeats the words of the voice that is gone now.
+                lyric.attrib.pop("print-object", "")
     elif tag in ("direction", "harmony"):
         if _text(child, "staff") == staff:
             _drop(child, "staff")

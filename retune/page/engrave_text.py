@@ -124,7 +124,7 @@ def _line(runs: list[Run], anchor: str, glyphs: set[str]) -> Iterator[str]:
             inked = sum(_width(run) for run in words)
             if inked:
                 yield _text(round(left + indent), y, words, "", round(inked))
-            left += length + (words[-1].style.size / 4 if length - indent - inked < 1 else 0)
+            left += length + (words[-1].style.size / 8 if length - indent - inked < 1 else 0)
 
 
 def _indent(text: str) -> str:
