@@ -36,7 +36,7 @@ DOORS = {
     "lxml": {"adapters"},
     "mido": {"adapters"},
     "music21": {"adapters"},
-    "numpy": {"adapters", "harmony", "tuning", "voice", "export"},
+    "numpy": {"adapters", "harmony", "tuning", "voice", "page", "export"},
     "scipy": {"adapters", "voice"},
     "soundfile": {"adapters"},
     "pyloudnorm": {"adapters"},

@@ -36,8 +36,8 @@ from retune.cli.track_options import track_options
 @tuning_options
 @talk_options
 def command(score: Path, **wishes: Any) -> None:
-    """Write everything for one SCORE: learning tracks as sound and MIDI, tuning tables, the note
-    list, and how to use them.
+    """Write everything for one SCORE: the rehearsal page, learning tracks as sound and MIDI,
+    tuning tables, the note list, and how to use them.
     """
     from retune.cli.learning import learn
     from retune.pipeline import ALL_OUTPUTS

@@ -17,6 +17,7 @@ from retune.export.audio_level import levelled
 from retune.export.audio_mix import RATE, Player, Stems, mixed
 from retune.export.audio_words import LANGUAGE_CODES, words_of
 from retune.export.base import LateFile
+from retune.export.midi import VOICE_OOHS
 from retune.export.names import safe_name
 from retune.export.options import did_you_mean, require_allowed
 from retune.tracks.take import Take
@@ -58,6 +59,10 @@ class AudioOptions:
     )
     soundfont: str = field(
         default="", metadata={"help": "a sound font to play instead of the built-in voice"}
+    )
+    font_program: int = field(
+        default=VOICE_OOHS,
+        metadata={"help": "the font's program for the voices, from 0", "least": 0, "most": 127},
     )
 
 
@@ -104,7 +109,7 @@ def _player(options: AudioOptions) -> Player:
     if options.soundfont:
         from retune.export.font_voice import font_stem
 
-        return font_stem(Path(options.soundfont), RATE)
+        return font_stem(Path(options.soundfont), options.font_program, RATE)
     wish = SoundOptions(
         vowel=options.vowel,
         language=options.language,

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
 from pathlib import Path
 
 import numpy as np
@@ -13,11 +12,14 @@ from retune.export.midi import VOICE_OOHS
 from retune.export.midi_plan import pitch_of
 from retune.score.model import Part, PartKind
 from retune.tuning.model import TunedNote, TunedScore
-from retune.voice.stems import TAIL_SECONDS
+from retune.voice.options import SoundOptions
+from retune.voice.stems import TAIL_SECONDS, stem
 
 
-def font_stem(font: Path, rate: int) -> Callable[[TunedScore, int], NDArray[np.float32]]:
-    """What plays a part through a sound font.
+def font_stem(font: Path, voices: int, rate: int) -> Player:
+    """What plays a part through a sound font, `voices` being the program of those who sing.
+
+    Clicks keep their own sound, as many fonts have no drums.
 
     Raises `OutputError` where the font cannot be read or there is no player for it.
     """
@@ -26,18 +28,19 @@ def font_stem(font: Path, rate: int) -> Callable[[TunedScore, int], NDArray[np.f
     def play(tuned: TunedScore, part: int) -> NDArray[np.float32]:
         """One part, mono, as long as the score and its tail."""
         who = tuned.score.parts[part]
+        if who.kind is PartKind.CLICK:
+            return stem(tuned, part, SoundOptions(), rate)
         notes = [_font_note(tuned, one) for one in tuned.notes if one.note.part == part]
         seconds = tuned.seconds(tuned.score.end) + TAIL_SECONDS
-        click = who.kind is PartKind.CLICK
-        return render(notes, _program(who), seconds, font, rate, percussion=click)
+        return render(notes, _program(who, voices), seconds, font, rate)
 
     return play
 
 
-def _program(part: Part) -> int:
-    if part.tuned or part.program is None:
-        return VOICE_OOHS if part.tuned else 0
-    return part.program
+def _program(part: Part, voices: int) -> int:
+    if part.tuned or (part.kind is PartKind.GUIDE and part.program == VOICE_OOHS):
+        return voices
+    return part.program or 0
 
 
 def _font_note(tuned: TunedScore, one: TunedNote) -> FontNote:

@@ -24,6 +24,15 @@ _DRIFT_WORDS = {
 
 _KINDS = (
     (
+        ".html",
+        (
+            "The rehearsal page: open it in any web browser, on a phone too; it needs no network. "
+            "It shows the score with its cents, plays any part against the others, slow or loud, "
+            "just or as on a piano, and tells of each chord how it is tuned. The pages with a "
+            "part in their name are the same with that part chosen."
+        ),
+    ),
+    (
         "tracks/",
         (
             "Sound files to practise with. The full mix has everybody. In your own folder: "
@@ -76,7 +85,7 @@ _TUNED_LIKE = (
     "words; sing your own words, not its vowel."
 )
 
-_READING_CENTS = (
+READING_CENTS = (
     "Cents are hundredths of a piano's semitone; + is higher than the piano's note, - is lower. "
     "A major third above its root sits about 14 cents lower than on a piano, a minor third about "
     "16 cents higher, a fifth 2 cents higher. A piano at home will not agree with these files, "
@@ -102,7 +111,8 @@ def _paragraph(text: str, indent: str = "") -> str:
     return textwrap.fill(text, _WIDTH, initial_indent=indent, subsequent_indent=indent)
 
 
-def _tuning_words(tuned: TunedScore) -> str:
+def tuning_words(tuned: TunedScore) -> str:
+    """How a piece is tuned, in a director's words."""
     policy = tuned.policy
     if policy.temperament is not Temperament.JUST:
         return f"Tuned in {policy.temperament} temperament, for comparison."
@@ -138,13 +148,14 @@ def _sections(takes: Sequence[Take], names: Sequence[str]) -> Iterator[str]:
     if tuned.score.composer:
         yield tuned.score.composer
     yield _paragraph(
-        f"{_tuning_words(tuned)} The home note is {tuned.harmony.tonic.root.name}, "
+        f"{tuning_words(tuned)} The home note is {tuned.harmony.tonic.root.name}, "
         f"A4 is {tuned.policy.reference_hz:g} Hz."
     )
     yield "WHAT IS WHAT"
     for folder, words in _KINDS:
-        if any(name.startswith(folder) for name in names):
-            yield f"{folder}\n{_paragraph(words, '    ')}"
+        own = [name for name in names if name.startswith(folder) or name.endswith(folder)]
+        if own:
+            yield f"{own[0] if folder.startswith('.') else folder}\n{_paragraph(words, '    ')}"
     if any(name.startswith("tracks/") for name in names):
         yield "PRACTISING WITH THE TRACKS"
         yield from map(_paragraph, _practising(takes))
@@ -155,7 +166,7 @@ def _sections(takes: Sequence[Take], names: Sequence[str]) -> Iterator[str]:
             "name it with --accompaniment to hear it."
         )
     yield "READING THE CENTS"
-    yield _paragraph(_READING_CENTS)
+    yield _paragraph(READING_CENTS)
     yield "YOUR EARS"
     yield _paragraph(LISTENING)
     yield "YOUR VOICE"

@@ -1,0 +1,163 @@
+"""What the page tells of each chord: tones, ratios, beats, shared partials, a vowel hint."""
+
+from __future__ import annotations
+
+from typing import Any
+
+from retune.harmony.model import Chord, Role
+from retune.harmony.symbols import chord_symbol, symbol_of
+from retune.score.model import VoiceType
+from retune.tuning.model import Segment, TunedNote, TunedScore
+from retune.tuning.sounding import Row, sung_by_chord
+from retune.units import hz_of
+from retune.voice.beats import Pair, SoundingTone, pairs, whole_chord_partial
+from retune.voice.vowelhint import Hint, hint
+
+_MOST_PAIRS = 8
+
+_INTERVALS = (
+    "octave",
+    "minor second",
+    "major second",
+    "minor third",
+    "major third",
+    "fourth",
+    "tritone",
+    "fifth",
+    "minor sixth",
+    "major sixth",
+    "minor seventh",
+    "major seventh",
+)
+_WIDE = {
+    13: "minor ninth",
+    14: "major ninth",
+    15: "minor tenth",
+    16: "major tenth",
+    19: "twelfth",
+}
+
+
+def cards(tuned: TunedScore) -> list[dict[str, Any]]:
+    """One card for each chord, in order; short where nothing sounds."""
+    rows = sung_by_chord(tuned)
+    return [_card(tuned, chord, row) for chord, row in zip(tuned.harmony.chords, rows, strict=True)]
+
+
+def _card(tuned: TunedScore, chord: Chord, row: Row) -> dict[str, Any]:
+    bar = tuned.score.bar_at(chord.onset)
+    start, end = tuned.seconds(chord.onset), tuned.seconds(chord.end)
+    card: dict[str, Any] = {
+        "t": round(start, 4),
+        "d": round(end - start, 4),
+        "bar": bar.number,
+        "beat": str(tuned.score.beat_at(chord.onset)),
+    }
+    if chord.root is None or chord.quality is None:
+        return card
+    parts = sorted(row)
+    sung = [row[part] for part in parts]
+    tones = [_sounding(tuned, *one) for one in sung]
+    found = pairs(tones)
+    root = tuned.root_cents[chord.index] or 0.0
+    card |= {
+        "symbol": chord_symbol(chord),
+        "root": chord.root.name,
+        "quality": str(chord.quality),
+        "doubt": chord.doubtful,
+        "confidence": round(chord.confidence, 2),
+        "rootCents": round(root, 3),
+        "tones": [_tone(tuned, note, segment, root) for note, segment in sung],
+        "pairs": [_pair(pair, sung) for pair in found[:_MOST_PAIRS]],
+    }
+    if chord.runner_up is not None:
+        card["other"] = symbol_of(*chord.runner_up)
+    if (whole := _whole(tones)) is not None:
+        card["whole"] = round(whole, 1)
+    voices = [_voice(tuned, part) for part in parts]
+    advice = hint([tone.hz for tone in tones], voices, found)
+    if advice is not None:
+        card["hint"] = hint_words(tuned, advice, parts)
+    return card
+
+
+def _sounding(tuned: TunedScore, note: TunedNote, segment: Segment) -> SoundingTone:
+    equal = hz_of(note.note.pitch.key, 0.0, tuned.policy.reference_hz)
+    return SoundingTone(tuned.hz(note, segment), equal, segment.ratio)
+
+
+def _tone(tuned: TunedScore, note: TunedNote, segment: Segment, root: float) -> dict[str, Any]:
+    """`cents` are against equal temperament, `rel` those of the interval above the root."""
+    ratio = segment.ratio
+    return {
+        "p": note.note.part,
+        "n": note.note.pitch.name,
+        "ratio": f"{ratio.numerator}:{ratio.denominator}" if ratio is not None else "",
+        "cents": round(segment.cents, 3),
+        "rel": round(segment.cents - root, 3),
+        "hz": round(tuned.hz(note, segment), 4),
+        "eq": round(hz_of(note.note.pitch.key, 0.0, tuned.policy.reference_hz), 4),
+        "role": "" if segment.role is Role.CHORD_TONE else str(segment.role),
+    }
+
+
+def _pair(pair: Pair, sung: list[tuple[TunedNote, Segment]]) -> dict[str, Any]:
+    low, high = sung[pair.low][0].note.pitch.key, sung[pair.high][0].note.pitch.key
+    return {
+        "a": pair.low,
+        "b": pair.high,
+        "name": interval_name(high - low),
+        "ratio": f"{pair.ratio.numerator}:{pair.ratio.denominator}",
+        "here": round(pair.beat_hz, 3),
+        "equal": round(pair.equal_hz, 3),
+        "shared": [[s.low_partial, s.high_partial, round(s.hz, 1)] for s in pair.shared],
+    }
+
+
+def interval_name(semitones: int) -> str:
+    """An interval in words, by its size in semitones from 1 up.
+
+    >>> [interval_name(size) for size in (4, 12, 16, 24, 28)]
+    ['major third', 'octave', 'major tenth', 'two octaves', 'major third and two octaves']
+    """
+    if semitones in _WIDE:
+        return _WIDE[semitones]
+    octaves, rest = divmod(semitones, 12)
+    count = {1: "an octave", 2: "two octaves", 3: "three octaves"}.get(
+        octaves, f"{octaves} octaves"
+    )
+    if rest == 0:
+        return "octave" if octaves == 1 else count
+    return f"{_INTERVALS[rest]} and {count}" if octaves else _INTERVALS[rest]
+
+
+def _whole(tones: list[SoundingTone]) -> float | None:
+    """The partial that the whole chord shares, counted from its lowest tone."""
+    if len(tones) < 3 or any(tone.ratio is None for tone in tones):
+        return None
+    lowest = min(tones, key=lambda tone: tone.hz)
+    ratios = []
+    for tone in tones:
+        assert tone.ratio is not None
+        assert lowest.ratio is not None
+        ratio = tone.ratio / lowest.ratio
+        while float(ratio) * 1.3 < tone.hz / lowest.hz:
+            ratio *= 2
+        ratios.append(ratio)
+    return whole_chord_partial(ratios, lowest.hz)
+
+
+def _voice(tuned: TunedScore, part: int) -> VoiceType | None:
+    return tuned.score.parts[part].voice_type
+
+
+def hint_words(tuned: TunedScore, advice: Hint, parts: list[int]) -> str:
+    """The hint as one cautious sentence."""
+    names = [tuned.score.parts[part].name for part in parts]
+    colour = "brighter" if advice.brighter else "darker"
+    return (
+        f"A slightly {colour} vowel in {names[advice.tone]}, towards {advice.toward}, brings out "
+        f"its partial {advice.partial} at {advice.hz:.0f} Hz, which it shares with partial "
+        f"{advice.other_partial} of {names[advice.other]}: a mistuning between them is then "
+        "easier to hear."
+    )
