@@ -18,6 +18,9 @@ from retune.errors import RetuneError
 MAX_SECONDS = 120
 """How long one child may take for all its pictures."""
 
+_MUSIC = 'class="measure"'
+"""What every picture of music holds; what is no music is drawn as an empty page."""
+
 
 class EngravingError(RetuneError):
     """A score that cannot be engraved; its other outputs can still be made."""
@@ -58,7 +61,9 @@ def drawn(sheets: Sequence[Sheet]) -> tuple[tuple[str, ...], ...]:
         raise EngravingError(f"no process could be started to engrave it: {error}") from None
     if child.returncode != 0:
         raise EngravingError(_reason(child.stderr.decode(errors="replace")))
-    pictures = tuple(tuple(pages) for pages in json.loads(child.stdout))
+    pictures = tuple(
+        tuple(page for page in pages if _MUSIC in page) for pages in json.loads(child.stdout)
+    )
     if not all(pictures):
         raise EngravingError("the engraver found no music in the score")
     return pictures
