@@ -41,6 +41,15 @@ def chord_symbol(chord: Chord) -> str:
     return chord.root.name + _with_added(chord.quality, chord.added)
 
 
+def printed(name: str) -> str:
+    """A symbol or the name of a pitch with the signs that musicians print.
+
+    >>> printed("F#m7b5"), printed("Bb")
+    ('F♯m7♭5', 'B♭')
+    """
+    return name.replace("#", "♯").replace("b", "♭")
+
+
 def doubtable_symbol(chord: Chord) -> str:
     """The chord's symbol, with a question mark where its root is in doubt."""
     return f"{chord_symbol(chord)}?" if chord.doubtful else chord_symbol(chord)

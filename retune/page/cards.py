@@ -52,6 +52,7 @@ def _card(tuned: TunedScore, chord: Chord, row: Row) -> dict[str, Any]:
         "d": round(end - start, 4),
         "bar": bar.number,
         "beat": str(tuned.score.beat_at(chord.onset)),
+        "w": bar.written,
     }
     if chord.root is None or chord.quality is None:
         return card

@@ -15,7 +15,7 @@ from dataclasses import dataclass
 from fractions import Fraction
 from html import escape
 
-from retune.harmony.symbols import doubtable_symbol
+from retune.harmony.symbols import doubtable_symbol, printed
 from retune.page.engrave_labels import Head
 from retune.page.engrave_svg import SystemDrawing
 from retune.tuning.model import TunedScore
@@ -84,7 +84,7 @@ def chord_line(
 def _chord(tuned: TunedScore, index: int, x: float, room: float, top: float) -> Iterator[str]:
     chord = tuned.harmony.chords[index]
     assert chord.root is not None, "silent chords have no appearance"
-    symbol, root = doubtable_symbol(chord), chord.root.name
+    symbol, root = printed(doubtable_symbol(chord)), printed(chord.root.name)
     left, baseline = round(x), round(top + SYMBOL_SIZE)
     width = estimated_width(symbol, SYMBOL_SIZE)
     doubt = " doubtful" if chord.doubtful else ""

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from html import escape
 
-from retune.harmony.symbols import doubtable_symbol
+from retune.harmony.symbols import doubtable_symbol, printed
 from retune.page.engrave_labels import signed
 from retune.tuning.model import Segment, TunedNote, TunedScore
 from retune.tuning.sounding import sung_by_chord
@@ -19,11 +19,12 @@ def grid(tuned: TunedScore) -> str:
         if chord.root is None:
             continue
         bar, root = score.bar_at(chord.onset), tuned.root_cents[chord.index] or 0.0
+        symbol = escape(printed(doubtable_symbol(chord)))
         cells = "".join(_cell(part.index, row.get(part.index), root) for part in score.parts)
         rows.append(
             f'<tr data-row="{chord.index}"><td>{escape(bar.number)}</td>'
             f"<td>{score.beat_at(chord.onset)}</td>"
-            f'<td class="chord" data-chord="{chord.index}">{escape(doubtable_symbol(chord))}</td>'
+            f'<td class="chord" data-chord="{chord.index}">{symbol}</td>'
             f"{cells}</tr>"
         )
     return (
@@ -41,6 +42,6 @@ def _cell(part: int, sung: tuple[TunedNote, Segment] | None, root: float) -> str
     small = " small" if abs(cents) <= 5 else ""
     word = f'<span class="word">{escape(note.note.lyric)}</span>' if note.note.lyric else ""
     return (
-        f'<td data-part="{part}">{escape(note.note.pitch.name)} '
+        f'<td data-part="{part}">{escape(printed(note.note.pitch.name))} '
         f'<span class="cents{small}">{signed(cents)}</span>{word}</td>'
     )

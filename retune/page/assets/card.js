@@ -19,7 +19,7 @@ function signed(cents, digits = 1) {
 
 // A name as musicians write it.
 function pretty(name) {
-  return name.replaceAll("#", "\u266f").replace(/(?<=[A-G])b+/g, (flats) => "\u266d".repeat(flats.length));
+  return name.replaceAll("#", "\u266f").replaceAll("b", "\u266d");
 }
 
 function beats(hz) {
@@ -123,7 +123,7 @@ class Card {
       element("td", {}, pair.shared.map(([low, high, hz]) => `${low}\u2013${high} at ${hz.toFixed(0)} Hz`).join(", ")),
     ));
     return this.table("How fast pairs beat, and the partials that meet",
-      ["Pair, lower first", "Interval", "Here", "In equal temperament", "Partials that meet"], rows);
+      ["Pair, lower first", "Interval", "Here", "In equal temperament", "Partials that meet, lower\u2013higher"], rows);
   }
 
   whole(chord) {

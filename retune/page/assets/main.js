@@ -52,12 +52,9 @@ class Page {
     document.documentElement.classList.add("alive");
     this.refresh();
     const frame = () => {
-      const begun = performance.now();
       this.frame();
-      this.spent = Math.max(this.spent * 0.98, performance.now() - begun);
       requestAnimationFrame(frame);
     };
-    this.spent = 0;
     requestAnimationFrame(frame);
   }
 

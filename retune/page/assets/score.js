@@ -58,7 +58,7 @@ class ScoreView {
   clicked(event) {
     const chord = event.target.closest("[data-chord]");
     if (chord) {
-      this.onchord(Number(chord.dataset.chord));
+      this.onchord(this.passOf(Number(chord.dataset.chord)));
       return;
     }
     const row = event.target.closest("tr[data-row]");
@@ -80,6 +80,15 @@ class ScoreView {
     const nearest = here.reduce((a, b) => (Math.abs(b[2] - x) < Math.abs(a[2] - x) ? b : a))[2];
     const times = here.filter((place) => Math.abs(place[2] - nearest) < 2).map(([time]) => time);
     this.player.seek(this.inPass(times));
+  }
+
+  // The same chord in the pass that is played now: what is printed is the first.
+  passOf(index) {
+    const { chords } = this.piece;
+    const printed = chords[index];
+    const passes = chords.filter((one) => one.symbol && one.w === printed.w && one.beat === printed.beat);
+    const time = this.inPass(passes.map((one) => one.t));
+    return chords.indexOf(passes.find((one) => one.t === time) || printed);
   }
 
   // Of the times that a place is played, the last one up to now, else the first.
