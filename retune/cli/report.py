@@ -61,9 +61,10 @@ _NAMED = 3
 """Files of one folder that are spoken of one by one; of more, the first stands for all."""
 
 
-def _folder_of(name: str) -> str:
+def _group_of(name: str) -> str:
+    """Files of a folder belong together; of those beside the folders, those of one kind."""
     folder, slash, _ = name.partition("/")
-    return folder + slash if slash else ""
+    return folder + slash if slash else name.rpartition(".")[2]
 
 
 def _about(file: WrittenFile, named: bool) -> str:
@@ -75,13 +76,16 @@ def _about(file: WrittenFile, named: bool) -> str:
 def written_lines(report: WriteReport) -> list[str]:
     """The files written, folder by folder, and what is to be said of them."""
     lines = [f"Wrote {counted(len(report.written), 'file')} to {report.folder}"]
-    by_folder: dict[str, list[WrittenFile]] = {}
+    groups: dict[str, list[WrittenFile]] = {}
     for file in report.written:
-        by_folder.setdefault(_folder_of(file.name), []).append(file)
-    for folder, files in by_folder.items():
+        groups.setdefault(_group_of(file.name), []).append(file)
+    for group, files in groups.items():
         alone = len(files) == 1
-        what = files[0].name.removeprefix(folder) if alone else counted(len(files), "file")
-        lines.append(f"  {folder:<9} {what}" if folder else f"  {what}")
+        if group.endswith("/"):
+            what = files[0].name.removeprefix(group) if alone else counted(len(files), "file")
+            lines.append(f"  {group:<9} {what}")
+        else:
+            lines.append(f"  {files[0].name}" + ("" if alone else f" (and {len(files) - 1} more)"))
         noted = [file for file in files if file.note or file.checked]
         told = noted if len(noted) <= _NAMED else noted[:1]
         more = len(noted) - len(told)
