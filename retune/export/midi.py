@@ -9,6 +9,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, field
+from enum import StrEnum
 from typing import ClassVar
 
 from retune.adapters.midi import RawMidi, write_midi_file
@@ -19,6 +20,8 @@ from retune.export.midi_channels import Channels, PartNeeds, allot, percussion
 from retune.export.midi_check import check_midi
 from retune.export.midi_conductor import conductor, slowest_tempo_lost
 from retune.export.midi_plan import PlannedNote, Planner
+from retune.export.midi_return import returned, source_of
+from retune.export.midi_return_check import check_returned
 from retune.export.midi_tracks import CENTRE, pan, part_tracks, volume
 from retune.export.names import safe_name
 from retune.export.options import require_allowed
@@ -33,6 +36,13 @@ VOICE_OOHS = 53
 
 _PAN_WIDTH = 16
 """Voices stand this far to either side at most: enough to tell them apart."""
+
+
+class Source(StrEnum):
+    """What is made of a score that came as MIDI."""
+
+    AUTO = "auto"
+    NEW = "new"
 
 
 @dataclass(frozen=True, slots=True)
@@ -54,6 +64,10 @@ class MidiOptions:
             "least": 0,
             "most": 1000,
         },
+    )
+    source: Source = field(
+        default=Source.AUTO,
+        metadata={"help": "auto gives a MIDI file back as it came, retuned; new writes it anew"},
     )
     program: int = field(
         default=VOICE_OOHS,
@@ -86,7 +100,7 @@ class MidiExporter:
         """
         require_allowed(self.name, options)
         for take in takes:
-            yield _file_of(take, options)
+            yield _returned_file(take, options) or _file_of(take, options)
 
 
 def _file_of(take: Take, options: MidiOptions) -> OutputFile:
@@ -118,6 +132,24 @@ def _file_of(take: Take, options: MidiOptions) -> OutputFile:
         data,
         "; ".join([allotment.note, *_remarks(score, ticks)]),
         lambda found: check_midi(found, played, options.bend_range, tuple(strips)),
+    )
+
+
+def _returned_file(take: Take, options: MidiOptions) -> OutputFile | None:
+    """The user's own MIDI file, retuned; None where the score did not come as one."""
+    if take.lead_in is not None or take.strips or options.source is Source.NEW:
+        return None
+    tuned = take.tuned
+    raw = source_of(tuned)
+    if raw is None:
+        return None
+    made = returned(tuned, raw, options.bend_range, options.glide_ms / 1000.0, options.channels)
+    shift = tuned.score.transposition.semitones
+    return OutputFile(
+        _file_name(take),
+        write_midi_file(made.raw),
+        made.note,
+        lambda found: check_returned(found, raw, made.instruments, made.bend_range, shift),
     )
 
 

@@ -189,6 +189,14 @@ def allot(score: Score, parts: Sequence[PartNeeds], wish: Channels) -> Allotment
     return _shared(score, parts, _count(one))
 
 
+def lanes_for(part: PartNeeds, wide: bool) -> list[tuple[PlannedNote, ...]]:
+    """One instrument's notes by lane: as few as they need, or twice as many, so that no release
+    is bent."""
+    tight = _fewest(part)
+    lanes = _alternating(part, tight) if wide else tight
+    return [tuple(lane.notes) for lane in lanes]
+
+
 def percussion(notes: Sequence[PlannedNote]) -> Lane:
     """The lane of clicks, on the percussion channel."""
     return Lane(PERCUSSION, 0, tuple(notes))

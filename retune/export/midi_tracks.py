@@ -21,13 +21,13 @@ from retune.adapters.midi import (
     Program,
     RawTrack,
 )
-from retune.export.midi_channels import Lane
+from retune.adapters.midi_marker import Lanes, marker_of, range_setup
+from retune.export.midi_channels import PERCUSSION, Lane
 from retune.export.midi_text import lyric_bytes, text_bytes
 
 _OFF, _SETUP, _BEND, _LYRIC, _ON = range(5)
 
 _VOLUME, _PAN, _RESET_CONTROLLERS = 7, 10, 121
-_RPN_MSB, _RPN_LSB, _DATA_MSB, _DATA_LSB = 101, 100, 6, 38
 _FULL_VOLUME = 100
 """The level General MIDI 2 gives a channel that was told none."""
 
@@ -92,7 +92,21 @@ def part_tracks(
             events.append((off + _OFF, NoteOff(lane.channel, note.key)))
             if words := lyric_bytes(note.lyric):
                 events.append((on + _LYRIC, Meta(MetaType.LYRIC, words)))
+    for part, channels in _own_channels(lanes).items():
+        timed[part].insert(0, (_SETUP, marker_of(Lanes(channels))))
     return [_track(names[part], events, end) for part, events in timed.items()]
+
+
+def _own_channels(lanes: Sequence[Lane]) -> dict[int, tuple[int, ...]]:
+    """The channels of each part that has its channels for itself, the percussion left out."""
+    found: dict[int, tuple[int, ...]] = {}
+    for lane in lanes:
+        if len(lane.parts) > 1:
+            return {}
+        if lane.channel != PERCUSSION:
+            (part,) = lane.parts
+            found[part] = (*found.get(part, ()), lane.channel)
+    return found
 
 
 def _track(name: str, timed: list[Timed], end: int) -> RawTrack:
@@ -108,17 +122,7 @@ def _setup(lane: Lane, level: int, place: int, bend_range: int) -> Iterator[Even
     yield Program(channel, lane.program)
     yield Control(channel, _VOLUME, level)
     yield Control(channel, _PAN, place)
-    # RPN 0, bend range: whole semitones, no cents; then the null RPN, so that a stray data
-    # entry changes nothing.
-    for controller, value in (
-        (_RPN_MSB, 0),
-        (_RPN_LSB, 0),
-        (_DATA_MSB, bend_range),
-        (_DATA_LSB, 0),
-        (_RPN_MSB, 127),
-        (_RPN_LSB, 127),
-    ):
-        yield Control(channel, controller, value)
+    yield from range_setup(channel, bend_range)
     yield Bend(channel, lane.notes[0].bends[0][1])
 
 

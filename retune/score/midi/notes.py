@@ -10,7 +10,7 @@ from __future__ import annotations
 
 from collections import defaultdict, deque
 from collections.abc import Iterator, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from itertools import chain, groupby
 
 from retune.adapters.midi import Control, NoteOff, NoteOn, RawTrack
@@ -28,7 +28,10 @@ _SILENCERS = (120, 123)
 
 @dataclass(frozen=True, slots=True)
 class PlayedNote:
-    """One key press, from tick `onset` to tick `end`; `hanging` if nothing released it."""
+    """One key press, from tick `onset` to tick `end`; `hanging` if nothing released it.
+
+    `source` names its track and event, `released` is the event of its track that ends it.
+    """
 
     channel: int
     key: int
@@ -37,6 +40,7 @@ class PlayedNote:
     end: int
     source: str
     hanging: bool = False
+    released: int | None = None
 
 
 def played_notes(track: RawTrack, number: int, last: int) -> list[PlayedNote]:
@@ -48,10 +52,10 @@ def played_notes(track: RawTrack, number: int, last: int) -> list[PlayedNote]:
     pressed: defaultdict[int, dict[int, deque[PlayedNote]]] = defaultdict(dict)
     found: list[PlayedNote] = []
 
-    def release(channel: int, key: int, tick: int) -> None:
+    def release(channel: int, key: int, tick: int, place: int) -> None:
         if key in pressed[channel]:
             waiting = pressed[channel][key]
-            found.append(_ended(waiting.popleft(), tick))
+            found.append(replace(waiting.popleft(), end=tick, released=place))
             if not waiting:
                 del pressed[channel][key]
 
@@ -61,21 +65,17 @@ def played_notes(track: RawTrack, number: int, last: int) -> list[PlayedNote]:
                 note = PlayedNote(channel, key, velocity, tick, tick, f"{number}.{place}")
                 pressed[channel].setdefault(key, deque()).append(note)
             case NoteOn(channel, key, _) | NoteOff(channel, key, _):
-                release(channel, key, tick)
+                release(channel, key, tick, place)
             case Control(channel, controller, _) if controller in _SILENCERS:
                 while pressed[channel]:
-                    release(channel, next(iter(pressed[channel])), tick)
+                    release(channel, next(iter(pressed[channel])), tick, place)
             case _:
                 pass
     waiting_everywhere = chain.from_iterable(keys.values() for keys in pressed.values())
     for note in chain.from_iterable(waiting_everywhere):
         end = last if last > note.onset else max(track.end, note.onset)
-        found.append(_ended(note, end, hanging=True))
+        found.append(replace(note, end=end, hanging=True))
     return sorted(found, key=lambda note: (note.onset, -note.key, note.end))
-
-
-def _ended(note: PlayedNote, end: int, *, hanging: bool = False) -> PlayedNote:
-    return PlayedNote(note.channel, note.key, note.velocity, note.onset, end, note.source, hanging)
 
 
 def in_voices(notes: Sequence[PlayedNote]) -> list[list[PlayedNote]]:

@@ -6,7 +6,7 @@ Conventions
 * Each channel of each track is a part; channel 10 has no pitches and is left out.
 * A MIDI file is played out already: nothing in it is a repeat or a jump, and its markers are
   rehearsal marks.
-* Pitch bends and pedals change nothing: notes stand at their keys, from press to release.
+* Pitch bends change nothing: notes stand at their keys.
 """
 
 from __future__ import annotations
@@ -25,6 +25,7 @@ from retune.score.midi.lyrics import lyrics_of
 from retune.score.midi.notes import RHYTHM_CHANNEL
 from retune.score.midi.parts import Line, Words, line_of, written_part
 from retune.score.midi.streams import Stream, streams_of, title_of
+from retune.score.midi.undo import as_before
 from retune.score.spelling import spell
 from retune.score.tempo import TempoChange, TempoMap
 from retune.written import Mark, MarkKind, WrittenScore
@@ -43,7 +44,7 @@ def read_midi(data: bytes, limits: Limits | None = None) -> WrittenScore:
         Larger or longer than `limits` allows.
     """
     limits = limits or Limits()
-    raw = in_sequence(read_midi_file(data, limits))
+    raw = as_before(in_sequence(read_midi_file(data, limits)))
     conductor = conductor_of(raw)
     streams = streams_of(raw)
     clock = ticks_per_quarter(raw.division)
@@ -162,5 +163,5 @@ def _bend_findings(raw: RawMidi) -> Iterator[Finding]:
         for _, event in track.events
     )
     if bends:
-        what = "pitch bends were not read, notes are taken at their keys"
-        yield Finding(Weight.LOSS, f"{what}: {bends}")
+        what = "pitch bends are not analysed; MIDI given back keeps them, other outputs do not"
+        yield Finding(Weight.NOTE, f"{what}: {bends}")

@@ -41,7 +41,17 @@ def streams_of(raw: RawMidi) -> list[Stream]:
     A track's name is its part's name; numbers tell several channels of one track apart. The
     one track of a format 0 file names the piece, not a part (RP-001).
     """
-    last = max(
+    last = last_key(raw)
+    return [
+        stream
+        for number, track in enumerate(raw.tracks)
+        for stream in _of_track(track, number, raw.format, last)
+    ]
+
+
+def last_key(raw: RawMidi) -> int:
+    """The tick of the last key pressed or released; what hangs is released there."""
+    return max(
         (
             tick
             for track in raw.tracks
@@ -50,11 +60,6 @@ def streams_of(raw: RawMidi) -> list[Stream]:
         ),
         default=0,
     )
-    return [
-        stream
-        for number, track in enumerate(raw.tracks)
-        for stream in _of_track(track, number, raw.format, last)
-    ]
 
 
 def _of_track(track: RawTrack, number: int, kind: int, last: int) -> Iterator[Stream]:
