@@ -15,6 +15,7 @@ from __future__ import annotations
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass, field
 from enum import StrEnum
+from itertools import pairwise
 
 from retune.errors import OutputError
 from retune.export.midi_plan import PlannedNote
@@ -190,11 +191,27 @@ def allot(score: Score, parts: Sequence[PartNeeds], wish: Channels) -> Allotment
 
 
 def lanes_for(part: PartNeeds, wide: bool) -> list[tuple[PlannedNote, ...]]:
-    """One instrument's notes by lane: as few as they need, or twice as many, so that no release
-    is bent."""
-    tight = _fewest(part)
-    lanes = _alternating(part, tight) if wide else tight
+    """One instrument's notes by lane: as few as they need, or so many that no release is bent,
+    but no more than four times as many."""
+    lanes = tight = _fewest(part)
+    for times in range(2, _MOST_TIMES + 1) if wide else ():
+        if not any(_drags(lane.notes) for lane in lanes):
+            break
+        lanes = _spread(part, times * len(tight)) or lanes
     return [tuple(lane.notes) for lane in lanes]
+
+
+_MOST_TIMES = 4
+
+
+def _drags(notes: Sequence[PlannedNote]) -> bool:
+    """Whether some note of a lane bends the release of one before it."""
+    return any(
+        before.off <= after.on
+        and after.start - before.stop < TAIL_SECONDS
+        and before.bends[-1][1] != after.bends[0][1]
+        for before, after in pairwise(notes)
+    )
 
 
 def percussion(notes: Sequence[PlannedNote]) -> Lane:

@@ -131,7 +131,7 @@ def returned(
     shared: dict[int, list[int]] = defaultdict(list)
     for one in instruments:
         if one.tuned or one.knob.own:
-            shared[one.home] += [c for c in (one.home, *one.channels) if c not in shared[one.home]]
+            shared[one.home] = list(dict.fromkeys((*shared[one.home], one.home, *one.channels)))
     tracks = [
         retuned_track(track, by_track.get(number, []), shared, semitones, plan.shift)
         for number, track in enumerate(raw.tracks)

@@ -108,6 +108,7 @@ class _Writer:
         self._shift = shift
         self._selected: dict[int, tuple[int, int]] = {}
         self._channel_of: dict[int, int] = {}
+        self._latest: dict[tuple[int, int], int] = {}
         for one in instruments:
             for channel, lane in zip(one.channels, one.lanes, strict=True):
                 self._channel_of |= {note.note: channel for note in lane}
@@ -151,13 +152,15 @@ class _Writer:
         match event:
             case NoteOn(channel, key, _) | NoteOff(channel, key, _):
                 if place in self._channel_of:
+                    self._latest[channel, key] = self._channel_of[place]
                     yield replace(event, channel=self._channel_of[place], key=key + self._shift)
                 else:
                     yield event
             case KeyPressure(channel, key, _):
-                moved = self._shift if channel in self._shared else 0
-                for other in self._heard_by(channel):
-                    yield replace(event, channel=other, key=key + moved)
+                if channel in self._shared:
+                    channel = self._latest.get((channel, key), channel)
+                    event = replace(event, channel=channel, key=key + self._shift)
+                yield event
             case Bend(channel, _):
                 # Those of instruments that are retuned are among what is added.
                 if channel not in self._shared:
