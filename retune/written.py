@@ -153,6 +153,8 @@ class WrittenPart:
     `instrument` is the sound or instrument name the file gives ("voice.soprano", "Organ").
     `unpitched` counts notes left out because they have no pitch; `clefs` holds the first clef
     of each staff: G, G8 (sounding an octave down), F, C; `group` is the bracket's name, if any.
+    `pedals` are spans, in quarter notes from the start of the file, in which a sustain pedal that
+    was played in is down.
     """
 
     id: str
@@ -165,6 +167,7 @@ class WrittenPart:
     clefs: tuple[str, ...] = ()
     group: str = ""
     unpitched: int = 0
+    pedals: tuple[tuple[Fraction, Fraction], ...] = ()
 
 
 @dataclass(frozen=True, slots=True)

@@ -70,7 +70,7 @@ def make_timeline(score: Score) -> Timeline:
     costs a hundred times as much.
     """
     notes = [i for i, note in enumerate(score.notes) if not note.grace]
-    onsets = [score.notes[i].onset for i in notes]
+    onsets = [score.notes[i].analysed_onset for i in notes]
     ends = [score.notes[i].analysed_end for i in notes]
     end = max([score.end, *ends], default=Fraction(0))
     denominators = {time.denominator for time in (*onsets, *ends, end)}

@@ -88,7 +88,11 @@ class Note:
     grace : bool
         Grace notes sound but are not analysed.
     stolen : Fraction
-        Time at the end that grace notes after this note take; analysis counts it as held.
+        Time at the end that grace notes after this note take; analysis counts it as held. In
+        played-in music, time that a pedal holds it longer, or less than 0 where it overlaps.
+    early : Fraction
+        How much before its onset the analysis takes it to begin, in played-in music: with the
+        first note of its chord.
     sources : tuple of str
         The noteheads joined in this note, as the file identifies them.
     """
@@ -101,6 +105,7 @@ class Note:
     lyric: str = ""
     grace: bool = False
     stolen: Fraction = Fraction(0)
+    early: Fraction = Fraction(0)
     marks: frozenset[str] = frozenset()
     sources: tuple[str, ...] = ()
 
@@ -108,6 +113,11 @@ class Note:
     def end(self) -> Fraction:
         """Where the note stops sounding."""
         return self.onset + self.duration
+
+    @property
+    def analysed_onset(self) -> Fraction:
+        """Where it begins for the analysis."""
+        return self.onset - self.early
 
     @property
     def analysed_end(self) -> Fraction:

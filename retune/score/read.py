@@ -57,6 +57,10 @@ def read_bytes(data: bytes, name: str, options: ReadOptions | None = None) -> Sc
     except RetuneError as error:
         raise error.in_file(file) from error.__cause__
     score = build_score(written, stem=stem_of(name), file=file, options=options)
+    if written.format == "midi":
+        from retune.score.midi.grouping import gathered
+
+        score = gathered(score, {part.id: part.pedals for part in written.parts})
     return replace(transposed(score, options.transpose), source=data)
 
 

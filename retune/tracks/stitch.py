@@ -268,6 +268,7 @@ def _cut_note(note: Note, start: Fraction, stop: Fraction, shift: Fraction) -> N
         onset=onset + shift,
         duration=end - onset,
         stolen=note.stolen if whole_end else Fraction(0),
+        early=note.early if note.analysed_onset >= start else Fraction(0),
     )
 
 

@@ -115,13 +115,15 @@ class Assembler:
         if len(heads) == 1:
             return (self._segment(heads[0], note.onset, note.duration),)
         slices, first = self.harmony.slices, self.layout.first
-        onsets = [note.onset, *(slices[first[piece]].onset for piece in heads[1:])]
+        # In played-in music a slice may begin before the note does.
+        later = (max(slices[first[piece]].onset, note.onset) for piece in heads[1:])
+        onsets = [note.onset, *later]
         ends = [*onsets[1:], note.end]
         # Grace notes that follow may have taken the last pieces' time.
         return tuple(
             self._segment(piece, onset, min(end, note.end) - onset)
             for piece, onset, end in zip(heads, onsets, ends, strict=True)
-            if onset < note.end
+            if onset < min(end, note.end)
         )
 
     def _segment(self, piece: int, onset: Fraction, duration: Fraction) -> Segment:

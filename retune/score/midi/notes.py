@@ -3,7 +3,7 @@
 Conventions
 -----------
 * Times are ticks of the file.
-* The sustain pedal changes no duration.
+* The sustain pedal changes no duration; the analysis hears it (`grouping`).
 """
 
 from __future__ import annotations
@@ -13,7 +13,7 @@ from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, replace
 from itertools import chain, groupby
 
-from retune.adapters.midi import Control, NoteOff, NoteOn, RawTrack
+from retune.adapters.midi import Control, NoteOff, NoteOn, RawMidi, RawTrack
 from retune.errors import LimitError
 
 RHYTHM_CHANNEL = 9
@@ -78,11 +78,30 @@ def played_notes(track: RawTrack, number: int, last: int) -> list[PlayedNote]:
     return sorted(found, key=lambda note: (note.onset, -note.key, note.end))
 
 
-def in_voices(notes: Sequence[PlayedNote]) -> list[list[PlayedNote]]:
+_SUSTAIN, _DOWN = 64, 64
+
+
+def pedals_of(raw: RawMidi) -> dict[int, list[tuple[int, int]]]:
+    """By channel, the spans of ticks in which the sustain pedal is down."""
+    found: defaultdict[int, list[tuple[int, int]]] = defaultdict(list)
+    down: dict[int, int] = {}
+    events = ((tick, event) for track in raw.tracks for tick, event in track.events)
+    for tick, event in sorted(events, key=lambda entry: entry[0]):
+        if isinstance(event, Control) and event.controller == _SUSTAIN:
+            if event.value >= _DOWN:
+                down.setdefault(event.channel, tick)
+            elif event.channel in down:
+                found[event.channel].append((down.pop(event.channel), tick))
+    return found
+
+
+def in_voices(notes: Sequence[PlayedNote], overlap: int = 0) -> list[list[PlayedNote]]:
     """The notes of a part as voices, each a line of notes and chords.
 
-    Notes that begin and end together are one chord; what overlaps otherwise is another voice.
-    Each goes on in the free voice that was last nearest in pitch. Voices come highest first.
+    Notes that begin and end together are one chord; what overlaps otherwise is another voice,
+    unless it is by no more than `overlap` ticks and the note before has sounded for longer than
+    that: played legato. Each goes on in the free voice that was last nearest in pitch. Voices
+    come highest first.
 
     Raises
     ------
@@ -91,7 +110,13 @@ def in_voices(notes: Sequence[PlayedNote]) -> list[list[PlayedNote]]:
     """
     voices: list[list[PlayedNote]] = []
     for chord in _chords(notes):
-        free = [voice for voice in voices if voice[-1].end <= chord[0].onset]
+        onset = chord[0].onset
+        free = [
+            voice
+            for voice in voices
+            if voice[-1].end <= onset
+            or (voice[-1].end <= onset + overlap and voice[-1].onset + 2 * overlap < onset)
+        ]
         if free:
             min(free, key=lambda voice: abs(voice[-1].key - chord[-1].key)).extend(chord)
         elif len(voices) < MAX_VOICES:

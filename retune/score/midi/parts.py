@@ -11,12 +11,17 @@ from collections import defaultdict
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from fractions import Fraction
+from itertools import pairwise
 
 from retune.pitch import Pitch
 from retune.score.midi.bars import BarGrid, Piece, rests_between
-from retune.score.midi.notes import in_voices
+from retune.score.midi.notes import PlayedNote, in_voices
 from retune.score.midi.streams import Stream
 from retune.written import Mark, WrittenBar, WrittenLyric, WrittenNote, WrittenPart, WrittenRest
+
+
+LEGATO_QUARTERS = Fraction(1, 12)
+"""How far a note played legato may reach into the next (our choice)."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -46,22 +51,24 @@ class Line:
 def line_of(stream: Stream, ticks_per_quarter: Fraction) -> Line:
     """The voices of a stream; notes without length are left out."""
     sounding = [note for note in stream.notes if note.end > note.onset]
-    return Line(
-        stream,
-        tuple(
-            tuple(
-                LineNote(
-                    note.onset / ticks_per_quarter,
-                    note.end / ticks_per_quarter,
-                    note.key,
-                    note.velocity,
-                    note.source,
-                )
-                for note in voice
-            )
-            for voice in in_voices(sounding)
-        ),
-    )
+    voices = in_voices(sounding, int(ticks_per_quarter * LEGATO_QUARTERS))
+    return Line(stream, tuple(tuple(_in_quarters(voice, ticks_per_quarter)) for voice in voices))
+
+
+def _in_quarters(voice: Sequence[PlayedNote], ticks_per_quarter: Fraction) -> Iterator[LineNote]:
+    """A voice's notes, each ending where the next one begins at the latest."""
+    onsets = sorted({note.onset for note in voice})
+    following = dict(pairwise([*onsets, None]))
+    for note in voice:
+        after = following[note.onset]
+        end = note.end if after is None else min(note.end, after)
+        yield LineNote(
+            note.onset / ticks_per_quarter,
+            end / ticks_per_quarter,
+            note.key,
+            note.velocity,
+            note.source,
+        )
 
 
 @dataclass(frozen=True, slots=True)
@@ -78,6 +85,7 @@ def written_part(
     words: Words,
     keys: Mapping[int, tuple[int, str | None]],
     marks: Mapping[int, Sequence[Mark]],
+    pedals: Sequence[tuple[Fraction, Fraction]] = (),
 ) -> WrittenPart:
     """Write a line into bars; `keys` and `marks` go by bar index."""
     notes: defaultdict[int, list[WrittenNote]] = defaultdict(list)
@@ -95,6 +103,7 @@ def written_part(
         name=line.stream.name,
         instrument=line.stream.instrument,
         program=line.stream.program,
+        pedals=tuple(pedals),
         bars=tuple(
             WrittenBar(
                 number=str(index + 1),

@@ -22,7 +22,7 @@ from retune.pitch import Pitch
 from retune.score.midi.bars import BarGrid
 from retune.score.midi.conductor import Conductor, conductor_of, in_sequence, ticks_per_quarter
 from retune.score.midi.lyrics import lyrics_of
-from retune.score.midi.notes import RHYTHM_CHANNEL
+from retune.score.midi.notes import RHYTHM_CHANNEL, pedals_of
 from retune.score.midi.parts import Line, Words, line_of, written_part
 from retune.score.midi.streams import Stream, streams_of, title_of
 from retune.score.midi.undo import as_before
@@ -58,9 +58,17 @@ def read_midi(data: bytes, limits: Limits | None = None) -> WrittenScore:
     words = Words(_pitches(lines, conductor), lyrics)
     keys = {grid.index_at(onset): key for onset, key in conductor.keys.items() if onset < end}
     marks = _marks(conductor, grid, end)
+    pedals = pedals_of(raw)
     return WrittenScore(
         parts=tuple(
-            written_part(line, grid, words, keys, {} if index else marks)
+            written_part(
+                line,
+                grid,
+                words,
+                keys,
+                {} if index else marks,
+                [(down / clock, up / clock) for down, up in pedals.get(line.stream.channel, ())],
+            )
             for index, line in enumerate(lines)
         ),
         title=title_of(raw, streams),
