@@ -19,7 +19,6 @@ from retune.score.midi.notes import PlayedNote, in_voices
 from retune.score.midi.streams import Stream
 from retune.written import Mark, WrittenBar, WrittenLyric, WrittenNote, WrittenPart, WrittenRest
 
-
 LEGATO_QUARTERS = Fraction(1, 12)
 """How far a note played legato may reach into the next (our choice)."""
 
