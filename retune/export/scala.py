@@ -9,6 +9,8 @@ from __future__ import annotations
 import math
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, field, replace
+from enum import StrEnum
+from fractions import Fraction
 from itertools import groupby
 from typing import ClassVar
 
@@ -22,6 +24,7 @@ from retune.export.csvtext import Cell, csv_bytes, number_cell, text_cell
 from retune.export.names import safe_name
 from retune.export.options import require_allowed
 from retune.export.places import Places
+from retune.export.scala_messages import STEP, message_file
 from retune.export.scala_tables import Table, TableMaker
 from retune.export.scala_text import KBM, SCL, kbm_bytes, scl_bytes
 from retune.harmony.symbols import chord_symbol
@@ -43,6 +46,17 @@ _COLUMNS = (
 )
 
 
+class Switch(StrEnum):
+    """Where one table may take over from another."""
+
+    CHORD = "chord"
+    BAR = "bar"
+
+
+_COUNTS = (1, 2, 4, 8)
+"""Numbers of tables whose errors are told, for who plays live."""
+
+
 @dataclass(frozen=True, slots=True)
 class ScalaOptions:
     """Options of the exporter."""
@@ -54,6 +68,14 @@ class ScalaOptions:
             "least": 0,
             "most": 9999,
         },
+    )
+    switch: Switch = field(
+        default=Switch.CHORD,
+        metadata={"help": "change tables at any chord, or at bar lines only"},
+    )
+    messages: bool = field(
+        default=False,
+        metadata={"help": "also a MIDI file that sends each table as a tuning message"},
     )
 
 
@@ -89,7 +111,7 @@ class ScalaExporter:
         require_allowed(self.name, options)
         piece = _Piece(takes[0].tuned)
         yield from piece.single()
-        yield from piece.numbered(options.tables)
+        yield from piece.numbered(options.tables, options.switch, options.messages)
 
 
 class _Piece:
@@ -111,12 +133,13 @@ class _Piece:
         note = error.words(self._tuned) if error else "no chord sounds; the home scale"
         yield from self._files(self._stem, table, f"{words}; {note}", f"{words}: {note}")
 
-    def numbered(self, wished: int) -> Iterator[OutputFile]:
+    def numbered(self, wished: int, switch: Switch, messages: bool) -> Iterator[OutputFile]:
         """A table for each group of chords, and when each applies."""
-        chords = self._tuned.harmony.chords
-        groups = alike(self._tunings, chords)
-        close = not 0 < wished < len(groups)
-        if not close:
+        groups = self._units(switch)
+        few = 0 < wished < len(groups)
+        close = switch is Switch.CHORD and not few
+        told = self._told(groups)
+        if few:
             groups = self._fewer(groups, wished)
         tables = [self._maker.table(group, close) for group in groups]
         digits = max(2, len(str(len(groups))))
@@ -128,9 +151,54 @@ class _Piece:
             files = self._files(name, table, self._words(group, table), "")
             yield from (replace(file, series=f"tables/{self._stem}") for file in files)
         error = _error(self._tunings, groups, tables)
-        note = f"{len(groups)} tables; {error.words(self._tuned)}" if error else "no chord sounds"
+        note = "no chord sounds"
+        if error:
+            note = f"{len(groups)} tables; {error.words(self._tuned)}{told}"
         rows = csv_bytes(_COLUMNS, self._rows(groups, names))
         yield OutputFile(f"tables/{self._stem}.tables.csv", rows, note)
+        if messages:
+            switches = self._switches(groups, names, tables)
+            yield OutputFile(
+                f"tables/{self._stem}.tables.mid",
+                message_file(self._tuned, switches),
+                f"each table as a scale/octave message (08 09) to all channels, within "
+                f"{STEP / 2:.4f} cents; the instrument must support it",
+            )
+
+    def _units(self, switch: Switch) -> list[list[int]]:
+        """What must share a table: chords tuned alike, or all that begin in one bar."""
+        chords = self._tuned.harmony.chords
+        if switch is Switch.CHORD:
+            return alike(self._tunings, chords)
+        by_bar: dict[int, list[int]] = {}
+        for index in self._tunings.sounding:
+            by_bar.setdefault(self._tuned.score.bar_at(chords[index].onset).index, []).append(index)
+        return list(by_bar.values())
+
+    def _told(self, groups: list[list[int]]) -> str:
+        """How far off chord tones are with a few tables."""
+        found: dict[int, str] = {}
+        for count in _COUNTS:
+            if count < len(groups):
+                fewer = self._fewer(groups, count)
+                error = _error(
+                    self._tunings, fewer, [self._maker.table(group, False) for group in fewer]
+                )
+                if error:
+                    found[count] = f"{error.rms:.1f}"
+        counts, errors = ", ".join(map(str, found)), ", ".join(found.values())
+        return f"; with {counts} tables {errors}" if found else ""
+
+    def _switches(
+        self, groups: list[list[int]], names: list[str], tables: list[Table]
+    ) -> list[tuple[Fraction, str, Sequence[float]]]:
+        """Each time another table comes into force."""
+        table_of = {chord: number for number, group in enumerate(groups) for chord in group}
+        found: list[tuple[Fraction, str, Sequence[float]]] = []
+        for number, run in groupby(sorted(table_of), key=lambda chord: table_of[chord]):
+            onset = self._tuned.harmony.chords[next(run)].onset
+            found.append((onset, names[number], tables[number].cents))
+        return found
 
     def _fewer(self, groups: list[list[int]], count: int) -> list[list[int]]:
         """Chords in the given number of groups that lose least, in order of appearance."""
