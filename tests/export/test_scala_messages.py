@@ -8,6 +8,8 @@ from __future__ import annotations
 import csv
 import io
 import re
+from fractions import Fraction
+from itertools import pairwise
 
 import pytest
 
@@ -23,11 +25,10 @@ CHROMATIC = "1 16/15 9/8 6/5 5/4 4/3 45/32 3/2 8/5 5/3 16/9 15/8"
 
 
 def test_the_worked_message_of_the_handbook() -> None:
-    from fractions import Fraction
-
     cents = [ratio_to_cents(Fraction(r)) - 100 * n for n, r in enumerate(CHROMATIC.split())]
     assert octave_message(cents).data == bytes.fromhex(
-        "7F 7F 08 09 03 7F 7F 40 00 47 41 42 40 4A 01 37 1F 3E 60 39 5F 41 20 48 61 35 7F 3D 40 38 3F"
+        "7F 7F 08 09 03 7F 7F 40 00 47 41 42 40 4A 01 37 1F"
+        " 3E 60 39 5F 41 20 48 61 35 7F 3D 40 38 3F"
     )
 
 
@@ -76,7 +77,7 @@ def test_messages_stand_where_the_list_says() -> None:
     rows = list(csv.DictReader(io.StringIO(made["harbour-hymn.tables.csv"].data.decode("utf-8"))))
     assert isinstance(raw.division, int)
     assert [tick / raw.division for tick, _ in sent] == [float(row["onset"]) for row in rows]
-    assert all(a[1] != b[1] for a, b in zip(sent, sent[1:], strict=False))
+    assert all(a[1] != b[1] for a, b in pairwise(sent))
     # Each word is what the table's own .scl and .kbm say of that key.
     scl = made[rows[0]["file"]].data.decode()
     assert "1/1 is" in scl
