@@ -1,8 +1,8 @@
-"""Beats between the sounding tones of a chord, and the partials that make them.
+"""Beats between the sounding tones of a chord.
 
 Two tones f1 and f2 near the ratio p:q beat where partial p of the lower meets partial q of the
 higher: at |p f1 - q f2| Hz, and k times that at their multiples (H. v. Helmholtz; handbook,
-voice.md 3.1 and 4.1).
+voice.md 3.1).
 
 Conventions
 -----------
@@ -15,13 +15,33 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 from fractions import Fraction
 from itertools import combinations
-from math import gcd, log2
+from math import inf, log2, log10
 
-HIGHEST_PARTIAL = 12
-"""Partials beyond are too soft in a sung tone to beat audibly (voice.md 2.3, 3.1)."""
+from retune.units import ratio_to_cents
+from retune.voice.partials import (
+    HIGHEST_PARTIAL,
+    NEAR_CENTS,
+    SharedPartial,
+    chord_partial,
+    coincidences,
+    nearest_just,
+)
 
-HIGHEST_HZ = 4000.0
-_NEAR_CENTS = 40.0
+__all__ = [
+    "FASTEST_COUNTED_HZ",
+    "Pair",
+    "SharedPartial",
+    "SoundingTone",
+    "beat_depth_db",
+    "beat_rate",
+    "countable",
+    "pairs",
+    "whole_chord_partial",
+]
+
+FASTEST_COUNTED_HZ = 10.0
+"""Faster beats run together (Zwicker and Fastl, from memory)."""
+
 _NAMED = 3
 
 
@@ -29,7 +49,7 @@ _NAMED = 3
 class SoundingTone:
     """One tone: its frequency here and in equal temperament, its ratio above the root.
 
-    The ratio is octave-reduced; None for tempered and lone tones.
+    The ratio is octave-reduced; None for tempered and lone tones, and for an accompaniment.
     """
 
     hz: float
@@ -38,20 +58,11 @@ class SoundingTone:
 
 
 @dataclass(frozen=True, slots=True)
-class SharedPartial:
-    """Where a partial of the lower tone meets one of the higher, in Hz of the lower."""
-
-    low_partial: int
-    high_partial: int
-    hz: float
-
-
-@dataclass(frozen=True, slots=True)
 class Pair:
     """Two tones, by their indices, the lower first.
 
-    `beat_hz` and `equal_hz` are how fast the first shared partials beat here and in equal
-    temperament.
+    `ratio` is the just interval that the tones are meant to make, or the nearest one. `beat_hz`
+    and `equal_hz` are how fast the first shared partials beat here and in equal temperament.
     """
 
     low: int
@@ -71,72 +82,62 @@ def beat_rate(low_hz: float, high_hz: float, p: int, q: int, k: int = 1) -> floa
     return k * abs(p * low_hz - q * high_hz)
 
 
-def shared_partials(ratio: Fraction, low_hz: float) -> tuple[SharedPartial, ...]:
-    """The lowest partials that two tones share, up to `HIGHEST_PARTIAL` and `HIGHEST_HZ`.
+def beat_depth_db(level_difference_db: float) -> float:
+    """From the softest to the loudest moment of a beat, in dB, by the difference of the two
+    partials' levels; infinite where they are equal, for then the sound stops in between.
 
-    >>> [(s.low_partial, s.high_partial) for s in shared_partials(Fraction(5, 2), 100.0)]
-    [(5, 2), (10, 4)]
+    >>> round(beat_depth_db(6.0), 1)
+    9.6
     """
-    p, q = ratio.numerator, ratio.denominator
-    found = []
-    for k in range(1, _NAMED + 1):
-        if k * p > HIGHEST_PARTIAL or k * p * low_hz > HIGHEST_HZ:
-            break
-        found.append(SharedPartial(k * p, k * q, k * p * low_hz))
-    return tuple(found)
+    softer = 10.0 ** (-abs(level_difference_db) / 20.0)
+    return 20.0 * log10((1.0 + softer) / (1.0 - softer)) if softer < 1.0 else inf
 
 
-def pairs(tones: Sequence[SoundingTone]) -> tuple[Pair, ...]:
-    """Every pair of different tones that shares a partial, the simplest intervals first.
+def countable(beat_hz: float, seconds: float) -> bool:
+    """Whether beats can be counted while a chord lasts: one whole beat, none too fast."""
+    return beat_hz * seconds >= 1.0 and beat_hz <= FASTEST_COUNTED_HZ
 
-    Tones without a ratio make no pair; unisons and pairs without audible shared partials neither.
+
+def pairs(tones: Sequence[SoundingTone], limit: int = 5) -> tuple[Pair, ...]:
+    """Every pair of tones whose first shared partials may be heard, simplest intervals first.
+
+    Parameters
+    ----------
+    tones : sequence of SoundingTone
+    limit : int
+        Prime limit of the just intervals sought for tones without a ratio.
+
+    Returns
+    -------
+    tuple of Pair
+        Without unisons, and without pairs that are near no just interval, or share only partials
+        beyond the `HIGHEST_PARTIAL`-th: nothing can be said of their beats.
     """
     found = []
     for first, second in combinations(range(len(tones)), 2):
         low, high = sorted((first, second), key=lambda index: tones[index].hz)
-        pair = _pair(tones, low, high)
+        pair = _pair(tones, low, high, limit)
         if pair is not None:
             found.append(pair)
     return tuple(sorted(found, key=_complexity))
 
 
 def whole_chord_partial(ratios: Sequence[Fraction], root_hz: float) -> float | None:
-    """The lowest partial that all tones of a chord share, in Hz: lcm(a1, a2, ...) times the
-    fundamental that they are multiples of; None where it is too high to be heard.
-
-    `ratios` are above the tone at `root_hz`, octaves kept.
-
-    >>> whole_chord_partial([Fraction(1), Fraction(5, 4), Fraction(3, 2)], 100.0)
-    1500.0
-    """
-    common = Fraction(1)
-    for ratio in ratios:
-        common = Fraction(
-            _lcm(common.numerator, ratio.numerator), gcd(common.denominator, ratio.denominator)
-        )
-    hz = float(common) * root_hz
-    return hz if hz <= HIGHEST_HZ else None
-
-
-def _lcm(a: int, b: int) -> int:
-    return a * b // gcd(a, b)
+    """Where all tones of a chord meet, in Hz, as `partials.chord_partial` finds it."""
+    found = chord_partial(ratios, root_hz)
+    return None if found is None else found.hz
 
 
 def _complexity(pair: Pair) -> tuple[int, int, int]:
     return pair.ratio.numerator + pair.ratio.denominator, pair.low, pair.high
 
 
-def _pair(tones: Sequence[SoundingTone], low: int, high: int) -> Pair | None:
+def _pair(tones: Sequence[SoundingTone], low: int, high: int, limit: int) -> Pair | None:
     below, above = tones[low], tones[high]
-    if below.ratio is None or above.ratio is None:
+    ratio = _meant(below, above) or nearest_just(above.hz / below.hz, limit)
+    if ratio is None or ratio <= 1 or ratio.numerator > HIGHEST_PARTIAL:
         return None
-    ratio = above.ratio / below.ratio
-    size = above.hz / below.hz
-    octaves = round(log2(size / float(ratio)))
-    ratio *= Fraction(2) ** octaves
-    if ratio <= 1 or abs(1200.0 * log2(size / float(ratio))) > _NEAR_CENTS:
-        return None
-    shared = shared_partials(ratio, below.hz)
+    shared = coincidences(ratio, below.hz, most=min(_NAMED, HIGHEST_PARTIAL // ratio.numerator))
     if not shared:
         return None
     p, q = ratio.numerator, ratio.denominator
@@ -148,3 +149,13 @@ def _pair(tones: Sequence[SoundingTone], low: int, high: int) -> Pair | None:
         beat_rate(below.hz, above.hz, p, q),
         beat_rate(below.equal_hz, above.equal_hz, p, q),
     )
+
+
+def _meant(below: SoundingTone, above: SoundingTone) -> Fraction | None:
+    """The interval between two tones of given ratios, where their pitches are near it."""
+    if below.ratio is None or above.ratio is None:
+        return None
+    ratio = above.ratio / below.ratio
+    size = above.hz / below.hz
+    ratio *= Fraction(2) ** round(log2(size / float(ratio)))
+    return ratio if abs(1200.0 * log2(size) - ratio_to_cents(ratio)) <= NEAR_CENTS else None
