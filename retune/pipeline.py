@@ -81,16 +81,21 @@ def check_wishes(exporters: Sequence[str], settings: Mapping[str, Settings]) -> 
 def exported(
     takes: Sequence[Take], exporters: Sequence[str], settings: Mapping[str, Settings]
 ) -> list[Output]:
-    """Every file that the named exporters make of the takes; nothing touches the disk."""
+    """Every file that the named exporters make of the takes; nothing touches the disk.
+
+    Raises `OutputError` that names the output and its distribution where one fails or makes
+    what cannot be written.
+    """
+    from retune.export.guard import files_of
     from retune.export.registry import find_exporters, parse_options
 
     installed = find_exporters()
-    chosen = [installed.get(name) for name in exporters]
-    options = [parse_options(one, settings.get(one.name, {})) for one in chosen]
+    chosen = [installed.entry(name) for name in exporters]
+    options = [parse_options(one.exporter, settings.get(one.exporter.name, {})) for one in chosen]
     return [
         file
-        for exporter, wish in zip(chosen, options, strict=True)
-        for file in exporter.export(takes, wish)
+        for entry, wish in zip(chosen, options, strict=True)
+        for file in files_of(entry, takes, wish)
     ]
 
 

@@ -9,6 +9,7 @@ from __future__ import annotations
 import os
 import signal
 import sys
+import traceback
 from importlib import import_module
 from types import FrameType
 
@@ -59,7 +60,7 @@ def _interrupt(signum: int, frame: FrameType | None) -> None:
     raise KeyboardInterrupt
 
 
-def _run(arguments: list[str] | None) -> int:
+def _run(arguments: list[str] | None, debug: bool = False) -> int:
     try:
         cli.main(args=arguments, prog_name="retune", standalone_mode=False)
     except click.exceptions.Exit as end:
@@ -75,6 +76,8 @@ def _run(arguments: list[str] | None) -> int:
         return WRONG_USAGE
     except RetuneError as error:
         print_error(error.what, error.where, error.hint)
+        if debug and error.__cause__ is not None:
+            traceback.print_exception(error.__cause__)
         return FAILED
     except BrokenPipeError:
         # The reader of our output has gone; a second flush at exit must not complain.
@@ -88,7 +91,7 @@ def main(arguments: list[str] | None = None) -> None:
     debug = "--debug" in (sys.argv[1:] if arguments is None else arguments)
     signal.signal(signal.SIGTERM, _interrupt)
     try:
-        code = _run(arguments)
+        code = _run(arguments, debug)
         sys.stdout.flush()
     except BrokenPipeError:
         os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())

@@ -6,7 +6,7 @@ import dataclasses
 
 import click
 
-from retune.cli.console import width
+from retune.cli.console import print_findings, width
 from retune.cli.options import examples
 
 
@@ -24,25 +24,29 @@ def command() -> None:
     from retune.export.registry import find_exporters
 
     formatter = click.HelpFormatter(width=width(), max_width=width())
-    for entry in find_exporters().entries:
+    found = find_exporters()
+    for entry in found.entries:
         exporter = entry.exporter
+        defaults = exporter.Options()
         formatter.write_heading(
             f"{exporter.name} ({', '.join(exporter.suffixes)}) from {entry.distribution}"
         )
         with formatter.indentation():
             formatter.write_text(exporter.summary)
             rows = [
-                (f"--set {exporter.name}.{field.name}={shown(field.default)}", help_of(field))
+                (f"--set {exporter.name}.{field.name}={shown(defaults, field)}", help_of(field))
                 for field in dataclasses.fields(exporter.Options)
             ]
             if rows:
                 formatter.write_dl(rows)
         formatter.write_paragraph()
     click.echo(formatter.getvalue().rstrip())
+    print_findings(found.findings, everything=True)
 
 
-def shown(value: object) -> str:
-    """A default as the user would type it."""
+def shown(defaults: object, field: dataclasses.Field[object]) -> str:
+    """The default of an option as the user would type it."""
+    value = getattr(defaults, field.name)
     return str(value).lower() if isinstance(value, bool) else str(value)
 
 

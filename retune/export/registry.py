@@ -14,9 +14,9 @@ from importlib.metadata import EntryPoint
 from itertools import pairwise
 from typing import Any
 
-from retune.errors import Finding, OutputError, Weight, WishError
+from retune.errors import Finding, OutputError, RetuneError, Weight, WishError
 from retune.export.base import Exporter
-from retune.export.options import did_you_mean, option_types, read_options
+from retune.export.options import did_you_mean, option_types, read_options, require_allowed
 
 GROUP = "retune.exporters"
 
@@ -43,9 +43,13 @@ class Exporters:
 
     def get(self, name: str) -> Exporter:
         """The exporter of a name; raises `WishError` that lists what is installed."""
+        return self.entry(name).exporter
+
+    def entry(self, name: str) -> Entry:
+        """The exporter of a name and its distribution; raises as `get` does."""
         for entry in self.entries:
             if entry.exporter.name == name:
-                return entry.exporter
+                return entry
         if name in self.broken:
             raise WishError(self.broken[name], hint="Install it again, or remove it")
         names = [entry.exporter.name for entry in self.entries]
@@ -92,8 +96,17 @@ def find_exporters(entry_points: Iterable[EntryPoint] | None = None) -> Exporter
 
 
 def parse_options(exporter: Exporter, texts: Mapping[str, str]) -> Any:
-    """The exporter's `Options` from texts by name; raises `WishError` (see `read_options`)."""
-    return read_options(exporter.name, exporter.Options, texts)
+    """The exporter's `Options` from texts by name; raises `WishError` (see `read_options`).
+
+    What the class itself refuses, with whatever exception, is a `WishError` too.
+    """
+    try:
+        return read_options(exporter.name, exporter.Options, texts)
+    except RetuneError:
+        raise
+    except Exception as error:
+        reason = f"{type(error).__name__}: {error}".removeprefix("ValueError: ")
+        raise WishError(f"the output {exporter.name} refuses its options: {reason}") from error
 
 
 def _distribution(point: EntryPoint) -> str:
@@ -118,6 +131,7 @@ def _load(point: EntryPoint) -> Exporter:
     if not _are_suffixes(made.suffixes):
         raise TypeError("its suffixes are no tuple of endings such as '.mid'")
     option_types(made.Options)
+    require_allowed(point.name, made.Options())
     _require_explicit(made.export)
     exporter: Exporter = made
     return exporter
