@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import math
+from fractions import Fraction
 from typing import Any
 
 from retune.harmony.model import Chord, Role
@@ -10,8 +12,9 @@ from retune.score.model import VoiceType
 from retune.tuning.model import Segment, TunedNote, TunedScore
 from retune.tuning.sounding import Row, sung_by_chord
 from retune.units import hz_of
-from retune.voice.beats import Pair, SoundingTone, pairs, whole_chord_partial
-from retune.voice.vowelhint import Hint, hint
+from retune.voice.beats import Pair, SoundingTone, pairs
+from retune.voice.partials import chord_partial
+from retune.voice.vowelhint import hint
 
 _MOST_PAIRS = 8
 
@@ -59,7 +62,7 @@ def _card(tuned: TunedScore, chord: Chord, row: Row) -> dict[str, Any]:
     parts = sorted(row)
     sung = [row[part] for part in parts]
     tones = [_sounding(tuned, *one) for one in sung]
-    found = pairs(tones)
+    found = pairs(tones, tuned.policy.prime_limit)
     root = tuned.root_cents[chord.index] or 0.0
     card |= {
         "symbol": chord_symbol(chord),
@@ -76,9 +79,10 @@ def _card(tuned: TunedScore, chord: Chord, row: Row) -> dict[str, Any]:
     if (whole := _whole(tones)) is not None:
         card["whole"] = round(whole, 1)
     voices = [_voice(tuned, part) for part in parts]
-    advice = hint([tone.hz for tone in tones], voices, found)
+    names = [tuned.score.parts[part].name for part in parts]
+    advice = hint([tone.hz for tone in tones], voices, found, names=names)
     if advice is not None:
-        card["hint"] = hint_words(tuned, advice, parts)
+        card["hint"] = advice.words
     return card
 
 
@@ -133,32 +137,19 @@ def interval_name(semitones: int) -> str:
 
 
 def _whole(tones: list[SoundingTone]) -> float | None:
-    """The partial that the whole chord shares, counted from its lowest tone."""
-    if len(tones) < 3 or any(tone.ratio is None for tone in tones):
+    """The lowest partial that all tones of a chord share, in Hz."""
+    if len(tones) < 3:
         return None
     lowest = min(tones, key=lambda tone: tone.hz)
     ratios = []
     for tone in tones:
-        assert tone.ratio is not None
-        assert lowest.ratio is not None
-        ratio = tone.ratio / lowest.ratio
-        while float(ratio) * 1.3 < tone.hz / lowest.hz:
-            ratio *= 2
-        ratios.append(ratio)
-    return whole_chord_partial(ratios, lowest.hz)
+        if tone.ratio is None or lowest.ratio is None:
+            return None
+        octaves = round(math.log2(tone.hz / lowest.hz / float(tone.ratio / lowest.ratio)))
+        ratios.append(tone.ratio / lowest.ratio * Fraction(2) ** octaves)
+    found = chord_partial(ratios, lowest.hz)
+    return None if found is None else found.hz
 
 
 def _voice(tuned: TunedScore, part: int) -> VoiceType | None:
     return tuned.score.parts[part].voice_type
-
-
-def hint_words(tuned: TunedScore, advice: Hint, parts: list[int]) -> str:
-    """The hint as one cautious sentence."""
-    names = [tuned.score.parts[part].name for part in parts]
-    colour = "brighter" if advice.brighter else "darker"
-    return (
-        f"A slightly {colour} vowel in {names[advice.tone]}, towards {advice.toward}, brings out "
-        f"its partial {advice.partial} at {advice.hz:.0f} Hz, which it shares with partial "
-        f"{advice.other_partial} of {names[advice.other]}: a mistuning between them is then "
-        "easier to hear."
-    )

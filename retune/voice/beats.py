@@ -22,7 +22,6 @@ from retune.voice.partials import (
     HIGHEST_PARTIAL,
     NEAR_CENTS,
     SharedPartial,
-    chord_partial,
     coincidences,
     nearest_just,
 )
@@ -36,7 +35,6 @@ __all__ = [
     "beat_rate",
     "countable",
     "pairs",
-    "whole_chord_partial",
 ]
 
 FASTEST_COUNTED_HZ = 10.0
@@ -120,12 +118,6 @@ def pairs(tones: Sequence[SoundingTone], limit: int = 5) -> tuple[Pair, ...]:
         if pair is not None:
             found.append(pair)
     return tuple(sorted(found, key=_complexity))
-
-
-def whole_chord_partial(ratios: Sequence[Fraction], root_hz: float) -> float | None:
-    """Where all tones of a chord meet, in Hz, as `partials.chord_partial` finds it."""
-    found = chord_partial(ratios, root_hz)
-    return None if found is None else found.hz
 
 
 def _complexity(pair: Pair) -> tuple[int, int, int]:

@@ -17,7 +17,6 @@ from retune.voice.beats import (
     beat_rate,
     countable,
     pairs,
-    whole_chord_partial,
 )
 
 F = Fraction
@@ -105,11 +104,6 @@ def test_which_beats_can_be_counted() -> None:
     assert countable(5.191, 0.5)
     assert not countable(14.118, 4.0)
     assert not countable(0.0, 60.0)
-
-
-def test_what_a_whole_chord_shares_in_hz() -> None:
-    assert whole_chord_partial([F(1), F(5, 4), F(3, 2)], C3) == pytest.approx(15 * C3)
-    assert whole_chord_partial([F(1), F(5, 4), F(3, 2), F(7, 4)], C3) is None
 
 
 RATIOS = st.sampled_from([F(1), F(9, 8), F(6, 5), F(5, 4), F(4, 3), F(3, 2), F(5, 3), F(7, 4)])
