@@ -12,7 +12,7 @@ from collections.abc import Iterator, Mapping, Sequence
 
 from retune.adapters.midi import read_midi_file
 from retune.errors import OutputError, RetuneError
-from retune.export.bend import bend_step
+from retune.export.bend import bend_step, nearest_key
 from retune.export.midi_plan import pitch_of
 from retune.export.midi_receiver import HeardNote, heard_notes
 from retune.export.ticks import Ticks
@@ -29,11 +29,16 @@ _Target = tuple[float, TunedNote]
 
 
 def check_midi(
-    data: bytes, tuned: TunedScore, bend_range: int, parts: Sequence[int] | None = None
+    data: bytes,
+    tuned: TunedScore,
+    bend_range: int,
+    parts: Sequence[int] | None = None,
+    one_track: bool = False,
 ) -> str:
     """Compare a file's bytes with a tuned score.
 
-    `parts` are those that the file plays, in the order of its tracks; all of them by default.
+    `parts` are those that the file plays, in the order of its tracks; all of them by default. With
+    `one_track` all stand in the first track after the conductor.
 
     Returns
     -------
@@ -55,7 +60,7 @@ def check_midi(
         raise OutputError("the MIDI file reads back without ticks a quarter note", hint=_FAULT)
     played = range(len(tuned.score.parts)) if parts is None else parts
     # The conductor track comes before the parts.
-    tracks = {part: track for track, part in enumerate(played, start=1)}
+    tracks = {part: 1 if one_track else track for track, part in enumerate(played, start=1)}
     bound = bend_step(bend_range) / 2 + _SLACK
     comparison = _Comparison(tuned, tracks, Ticks(raw.division), bound)
     worst = max((comparison.error(*pair) for pair in comparison.pairs(heard)), default=0.0)
@@ -89,8 +94,11 @@ class _Comparison:
             track, tick = min(extra, key=lambda place: place[1])
             raise OutputError(f"track {track + 1} plays a note at tick {tick} that no part has")
         for place, wanted in targets.items():
-            wanted.sort(key=lambda target: (target[0], target[1].note.duration))
-            there = sorted(found[place], key=lambda one: (one.pitch, one.off))
+            # Of two parts in unison, a hair apart, their lengths tell which is which.
+            wanted.sort(
+                key=lambda target: (nearest_key(target[0]), target[1].note.duration, target[0])
+            )
+            there = sorted(found[place], key=lambda one: (one.key, one.off, one.pitch))
             if len(there) != len(wanted):
                 raise self._fault(wanted[0][1], f"sounds {len(there)} times, not {len(wanted)}")
             yield from zip(there, (note for _, note in wanted), strict=True)
