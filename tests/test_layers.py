@@ -24,6 +24,7 @@ ROWS: tuple[tuple[str, ...], ...] = (
     ("page",),
     ("export",),
     ("pipeline",),
+    ("play", "watch"),
     ("cli",),
     ("__main__",),
 )
@@ -42,6 +43,7 @@ DOORS = {
     "pyloudnorm": {"adapters"},
     "fluidsynth": {"adapters"},
     "verovio": {"adapters"},
+    "watchfiles": {"adapters"},
 }
 
 MODULES = sorted(ROOT.rglob("*.py"))

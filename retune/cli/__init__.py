@@ -25,6 +25,8 @@ COMMANDS = {
     "show": "retune.cli.show",
     "tracks": "retune.cli.tracks",
     "export": "retune.cli.export",
+    "play": "retune.cli.play",
+    "ports": "retune.cli.ports",
     "exporters": "retune.cli.exporters",
 }
 """Where each command lives; a module is imported only when its command is needed."""
@@ -62,9 +64,8 @@ def _interrupt(signum: int, frame: FrameType | None) -> None:
 
 def _run(arguments: list[str] | None, debug: bool = False) -> int:
     try:
-        cli.main(args=arguments, prog_name="retune", standalone_mode=False)
-    except click.exceptions.Exit as end:
-        return end.exit_code
+        # Of a command that ends early, click hands the exit code back here.
+        code: object = cli.main(args=arguments, prog_name="retune", standalone_mode=False)
     except click.ClickException as error:
         error.show()
         return error.exit_code
@@ -83,7 +84,7 @@ def _run(arguments: list[str] | None, debug: bool = False) -> int:
         # The reader of our output has gone; a second flush at exit must not complain.
         os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
         return 0
-    return 0
+    return code if isinstance(code, int) else 0
 
 
 def main(arguments: list[str] | None = None) -> None:
