@@ -8,7 +8,7 @@ everywhere. What is written is read back and compared with the tuned pitches.
 from __future__ import annotations
 
 from collections.abc import Iterator, Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from enum import StrEnum
 from typing import ClassVar
 
@@ -18,24 +18,18 @@ from retune.export.base import OutputFile
 from retune.export.bend import DEFAULT_RANGE
 from retune.export.midi_channels import Channels, PartNeeds, allot, percussion
 from retune.export.midi_check import check_midi
-from retune.export.midi_conductor import conductor, slowest_tempo_lost
+from retune.export.midi_conductor import conductor
+from retune.export.midi_mix import VOICE_OOHS, file_name, mix_of, program_of, remarks, strips_of
 from retune.export.midi_plan import PlannedNote, Planner
 from retune.export.midi_return import returned, source_of
 from retune.export.midi_return_check import check_returned
-from retune.export.midi_tracks import CENTRE, pan, part_tracks, volume
-from retune.export.names import safe_name
+from retune.export.midi_tracks import part_tracks
 from retune.export.options import require_allowed
-from retune.export.ticks import Ticks, ticks_for
-from retune.score.model import Part, PartKind, Score
+from retune.export.ticks import ticks_for
+from retune.score.model import PartKind
 from retune.score.titles import part_titles
-from retune.tracks.take import Strip, Take
-
-VOICE_OOHS = 53
-"""General MIDI program of sung parts, counting from 0. Its neighbour 52, choir aahs, is up to
-42 cents out of tune in a common sound font, which no just third outlives."""
-
-_PAN_WIDTH = 16
-"""Voices stand this far to either side at most: enough to tell them apart."""
+from retune.tracks.take import Take
+from retune.tuning.model import TunedScore
 
 
 class Source(StrEnum):
@@ -69,6 +63,10 @@ class MidiOptions:
         default=Source.AUTO,
         metadata={"help": "auto gives a MIDI file back as it came, retuned; new writes it anew"},
     )
+    parts: bool = field(
+        default=False,
+        metadata={"help": "also a file for each part, on one channel where it can be"},
+    )
     program: int = field(
         default=VOICE_OOHS,
         metadata={
@@ -101,6 +99,8 @@ class MidiExporter:
         require_allowed(self.name, options)
         for take in takes:
             yield _returned_file(take, options) or _file_of(take, options)
+            if options.parts and take.lead_in is None:
+                yield from _part_files(take.tuned, options)
 
 
 def _file_of(take: Take, options: MidiOptions) -> OutputFile:
@@ -109,14 +109,14 @@ def _file_of(take: Take, options: MidiOptions) -> OutputFile:
     if not take.tuned.score.notes:
         raise OutputError("there is no note to write as MIDI", Place(score.file))
     ticks = ticks_for(played)
-    strips = _strips(take)
+    strips = strips_of(take)
     planned = Planner(played, ticks, options.bend_range, options.glide_ms / 1000.0).notes(strips)
     by_part: dict[int, list[PlannedNote]] = {index: [] for index in strips}
     for note in planned:
         by_part[note.part].append(note)
     clicks = [index for index in strips if score.parts[index].kind is PartKind.CLICK]
     needs = [
-        PartNeeds(notes, _program(score.parts[index], options.program), score.parts[index].tuned)
+        PartNeeds(notes, program_of(score.parts[index], options.program), score.parts[index].tuned)
         for index, notes in by_part.items()
         if index not in clicks
     ]
@@ -125,12 +125,12 @@ def _file_of(take: Take, options: MidiOptions) -> OutputFile:
     end = max(ticks.at(score.end), *(note.off for note in planned))
     titles = part_titles(score)
     names = {index: titles[index] for index in strips}
-    tracks = part_tracks(names, lanes, _mix(score, strips), options.bend_range, end)
+    tracks = part_tracks(names, lanes, mix_of(score, strips), options.bend_range, end)
     data = write_midi_file(RawMidi(1, ticks.division, (conductor(score, ticks, end), *tracks)))
     return OutputFile(
-        _file_name(take),
+        file_name("midi", take),
         data,
-        "; ".join([allotment.note, *_remarks(score, ticks)]),
+        "; ".join([allotment.note, *remarks(score, ticks)]),
         lambda found: check_midi(found, played, options.bend_range, tuple(strips)),
     )
 
@@ -146,54 +146,16 @@ def _returned_file(take: Take, options: MidiOptions) -> OutputFile | None:
     made = returned(tuned, raw, options.bend_range, options.glide_ms / 1000.0, options.channels)
     shift = tuned.score.transposition.semitones
     return OutputFile(
-        _file_name(take),
+        file_name("midi", take),
         write_midi_file(made.raw),
         made.note,
         lambda found: check_returned(found, raw, made.instruments, made.bend_range, shift),
     )
 
 
-def _strips(take: Take) -> dict[int, Strip]:
-    """How each part that sounds stands in the mix, by part."""
-    found = {part.index: take.strip(part.index) for part in take.played.score.parts}
-    return {index: strip for index, strip in found.items() if strip is not None}
-
-
-def _mix(score: Score, strips: dict[int, Strip]) -> dict[int, tuple[int, int]]:
-    """Volume and pan of each part as MIDI has them."""
-    plain = all(strip == Strip() for strip in strips.values())
-    pans = dict(enumerate(_pans(score))) if plain else {}
-    return {
-        index: (volume(strip.gain_db), pans.get(index, pan(strip.pan)))
-        for index, strip in strips.items()
-    }
-
-
-def _program(part: Part, voices: int) -> int:
-    """The file's own program for instruments; singers get one that is in tune."""
-    return voices if part.tuned or part.program is None else part.program
-
-
-def _pans(score: Score) -> list[int]:
-    """Voices from left to right in score order, accompaniment in the middle."""
-    voices = [part.index for part in score.parts if part.tuned]
-    pans = [CENTRE] * len(score.parts)
-    if len(voices) > 1:
-        for place, index in enumerate(voices):
-            pans[index] = CENTRE - _PAN_WIDTH + 2 * _PAN_WIDTH * place // (len(voices) - 1)
-    return pans
-
-
-def _remarks(score: Score, ticks: Ticks) -> Iterator[str]:
-    """What the file states less exactly than the score does."""
-    if ticks.error:
-        microseconds = 1e6 * float(ticks.error) * 60.0 / float(score.tempo.changes[0].qpm)
-        yield f"onsets within {microseconds:.0f} microseconds, as no MIDI division holds them all"
-    if slowest_tempo_lost(score):
-        yield "a tempo under 3.6 quarter notes a minute is written as 3.6, the slowest there is"
-
-
-def _file_name(take: Take) -> str:
-    folders = ["midi", *([safe_name(take.folder)] if take.folder else [])]
-    stem = safe_name(take.tuned.score.stem)
-    return "/".join([*folders, f"{safe_name(take.name)} - {stem}.mid"])
+def _part_files(tuned: TunedScore, options: MidiOptions) -> Iterator[OutputFile]:
+    """A file for each part alone, for synths that play one voice."""
+    alone = replace(options, channels=Channels.ONE)
+    for part, title in zip(tuned.score.parts, part_titles(tuned.score), strict=True):
+        strips = tuple(Strip() if one is part else None for one in tuned.score.parts)
+        yield _file_of(Take(tuned, title, strips=strips), alone)

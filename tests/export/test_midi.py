@@ -469,3 +469,27 @@ def test_the_check_finds_a_wrong_file(change: str) -> None:
     assert file.check is not None
     with pytest.raises(OutputError):
         file.check(damaged(change))
+
+
+def test_a_file_for_each_part_on_one_channel() -> None:
+    piece = tuned_score(
+        [
+            sung(0, 0, "E4", (1, -13.686)),
+            sung(0, 1, "F4", (1, 15.6)),
+            sung(1, 0, "C4", (2, 0.0)),
+        ],
+        parts=["Alto", "Tenor"],
+    )
+    full, alto, tenor = MidiExporter().export([Take(piece)], MidiOptions(parts=True))
+    assert [file.name for file in (full, alto, tenor)] == [
+        "midi/Full mix - piece.mid",
+        "midi/Alto - piece.mid",
+        "midi/Tenor - piece.mid",
+    ]
+    for file, notes in ((alto, 2), (tenor, 1)):
+        assert file.check is not None
+        file.check(file.data)
+        raw = read_midi_file(file.data)
+        pressed = [e for t in raw.tracks for _, e in t.events if isinstance(e, NoteOn)]
+        assert len(pressed) == notes
+        assert {e.channel for e in pressed} == {0}
