@@ -17,7 +17,7 @@ from retune.export.audio_level import levelled
 from retune.export.audio_mix import RATE, Player, Stems, mixed
 from retune.export.audio_words import LANGUAGE_CODES, words_of
 from retune.export.base import LateFile
-from retune.export.midi import VOICE_OOHS
+from retune.export.midi_mix import VOICE_OOHS
 from retune.export.names import safe_name
 from retune.export.options import did_you_mean, require_allowed
 from retune.tracks.take import Take

@@ -9,7 +9,7 @@ from numpy.typing import NDArray
 
 from retune.adapters.soundfont import FontNote, render, require_soundfont
 from retune.export.audio_mix import Player
-from retune.export.midi import VOICE_OOHS
+from retune.export.midi_mix import VOICE_OOHS
 from retune.export.midi_plan import pitch_of
 from retune.score.model import Part, PartKind
 from retune.tuning.model import TunedNote, TunedScore

@@ -28,7 +28,7 @@ from retune.export.options import require_allowed
 from retune.export.ticks import ticks_for
 from retune.score.model import PartKind
 from retune.score.titles import part_titles
-from retune.tracks.take import Take
+from retune.tracks.take import Strip, Take
 from retune.tuning.model import TunedScore
 
 

@@ -29,9 +29,9 @@ from retune.adapters.midi_marker import range_setup
 from retune.errors import OutputError, Place
 from retune.export.base import OutputFile
 from retune.export.bend import MIDDLE, bend_step
-from retune.export.midi import VOICE_OOHS
 from retune.export.midi_check import check_midi
 from retune.export.midi_conductor import conductor
+from retune.export.midi_mix import VOICE_OOHS
 from retune.export.midi_plan import PlannedNote, Planner
 from retune.export.midi_text import lyric_bytes, text_bytes
 from retune.export.names import safe_name

@@ -31,9 +31,9 @@ from retune.adapters.midi import (
 from retune.errors import OutputError, Place
 from retune.export.base import OutputFile
 from retune.export.bend import nearest_key
-from retune.export.midi import VOICE_OOHS
 from retune.export.midi_channels import CHANNELS, PERCUSSION
 from retune.export.midi_conductor import conductor
+from retune.export.midi_mix import VOICE_OOHS
 from retune.export.midi_plan import pitch_of
 from retune.export.midi_text import lyric_bytes, text_bytes
 from retune.export.midi_tracks import CENTRE, pan, volume
