@@ -9,6 +9,7 @@ from retune.adapters.midi import Bend, Control, NoteOff, NoteOn, Program, read_m
 from retune.errors import OutputError, WishError
 from retune.export.base import OutputFile
 from retune.export.mpe import MpeExporter, MpeOptions
+from retune.score.read import read_bytes
 from retune.tracks.learning import learning_takes
 from retune.tracks.options import TrackOptions
 from retune.tracks.take import Take
@@ -110,3 +111,11 @@ def test_learning_tracks_leave_their_clicks_out_and_say_so() -> None:
 def test_members_out_of_range() -> None:
     with pytest.raises(WishError, match=r"mpe\.members"):
         list(MpeExporter().export([Take(tuned("harbour-hymn"))], MpeOptions(members=16)))
+
+
+def test_a_zone_is_read_as_one_instrument() -> None:
+    piece = tuned("lantern-street")
+    back = read_bytes(written(piece).data, "zone.mid")
+    # One track, split into as many lines as sound at once: four voices.
+    assert len(back.parts) == 4
+    assert len(back.notes) == len(piece.notes)

@@ -6,6 +6,7 @@ from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 
 from retune.adapters.midi import (
+    Control,
     Meta,
     MetaType,
     NoteOff,
@@ -41,12 +42,41 @@ def streams_of(raw: RawMidi) -> list[Stream]:
     A track's name is its part's name; numbers tell several channels of one track apart. The
     one track of a format 0 file names the piece, not a part (RP-001).
     """
-    last = last_key(raw)
+    last, zones = last_key(raw), mpe_zones(raw)
     return [
         stream
         for number, track in enumerate(raw.tracks)
-        for stream in _of_track(track, number, raw.format, last)
+        for stream in _of_track(track, number, raw.format, last, zones)
     ]
+
+
+_RPN_MSB, _RPN_LSB, _DATA_MSB = 101, 100, 6
+_MPE = (0, 6)
+_LOWER, _UPPER = 0, 15
+
+
+def mpe_zones(raw: RawMidi) -> dict[int, int]:
+    """Member channels of MPE zones and their managers: one instrument over several channels.
+
+    By the configuration message, RPN 6 on channel 1 (members from 2 up) or 16 (from 15 down);
+    M1-100-UM v1.1, 2.1.
+    """
+    found: dict[int, int] = {}
+    selected: dict[int, tuple[int, int]] = {}
+    for track in raw.tracks:
+        for _, event in track.events:
+            if not isinstance(event, Control) or event.channel not in (_LOWER, _UPPER):
+                continue
+            msb, lsb = selected.get(event.channel, (127, 127))
+            if event.controller == _RPN_MSB:
+                selected[event.channel] = (event.value, lsb)
+            elif event.controller == _RPN_LSB:
+                selected[event.channel] = (msb, event.value)
+            elif event.controller == _DATA_MSB and (msb, lsb) == _MPE:
+                members = range(1, min(event.value, 15) + 1)
+                step = 1 if event.channel == _LOWER else -1
+                found |= {event.channel + step * one: event.channel for one in members}
+    return found
 
 
 def last_key(raw: RawMidi) -> int:
@@ -62,10 +92,12 @@ def last_key(raw: RawMidi) -> int:
     )
 
 
-def _of_track(track: RawTrack, number: int, kind: int, last: int) -> Iterator[Stream]:
+def _of_track(
+    track: RawTrack, number: int, kind: int, last: int, zones: dict[int, int]
+) -> Iterator[Stream]:
     by_channel: dict[int, list[PlayedNote]] = {}
     for note in played_notes(track, number, last):
-        by_channel.setdefault(note.channel, []).append(note)
+        by_channel.setdefault(zones.get(note.channel, note.channel), []).append(note)
     name = first_text(track, MetaType.TRACK_NAME) if kind else ""
     for place, channel in enumerate(sorted(by_channel), start=1):
         numbered = f"{name} {place}" if name and len(by_channel) > 1 else name
