@@ -25,6 +25,7 @@ COMMANDS = {
     "show": "retune.cli.show",
     "tracks": "retune.cli.tracks",
     "export": "retune.cli.export",
+    "watch": "retune.cli.watch",
     "play": "retune.cli.play",
     "ports": "retune.cli.ports",
     "exporters": "retune.cli.exporters",

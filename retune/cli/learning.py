@@ -12,6 +12,7 @@ from retune.cli.options import grouped, source_of
 from retune.cli.report import report_findings, summary, written_lines
 
 if TYPE_CHECKING:
+    from retune.adapters.disk import WriteReport
     from retune.cli.track_options import Practice
     from retune.score.options import ReadOptions
     from retune.tuning.policy import Policy
@@ -29,7 +30,7 @@ def learn(
     practice: Practice,
     all_findings: bool,
     quiet: bool,
-) -> None:
+) -> WriteReport:
     """Write the outputs of one score into a folder; `output` None is a folder beside it."""
     from retune import pipeline
 
@@ -56,3 +57,4 @@ def learn(
         say(summary(tuned))
         report_findings(tuned, all_findings)
         say("\n".join(written_lines(report)))
+    return report
