@@ -8,6 +8,7 @@ from itertools import count
 from pathlib import Path
 from typing import TYPE_CHECKING
 
+from retune.errors import OutputError
 from retune.harmony import analyse
 from retune.score.read import read, read_bytes
 from retune.tracks.learning import excerpt, learning_takes
@@ -99,11 +100,35 @@ def exported(
     ]
 
 
+def exported_where_possible(
+    takes: Sequence[Take],
+    exporters: Sequence[str],
+    settings: Mapping[str, Settings],
+    failed: list[OutputError] | None,
+) -> list[Output]:
+    """As `exported`; an output that fails goes into `failed`, if that is given and others do not.
+
+    Raises the error where none is left, or without `failed`.
+    """
+    if failed is None:
+        return exported(takes, exporters, settings)
+    files: list[Output] = []
+    for name in exporters:
+        try:
+            files += exported(takes, [name], settings)
+        except OutputError as error:
+            failed.append(error)
+    if failed and not files:
+        raise failed.pop()
+    return files
+
+
 def write(
     tuned: TunedScore,
     exporters: Sequence[str],
     folder: str | Path,
     settings: Mapping[str, Settings] | None = None,
+    failed: list[OutputError] | None = None,
 ) -> WriteReport:
     """Export a tuned score into a folder: all files or, on any failure, none.
 
@@ -113,6 +138,8 @@ def write(
         Names such as "midi", "scala", "notes".
     settings : mapping, optional
         Exporter name -> option name -> value as text, as in ``{"midi": {"channels": "one"}}``.
+    failed : list, optional
+        Where errors of single outputs go, so that the others are still written.
 
     Raises
     ------
@@ -123,7 +150,8 @@ def write(
     """
     from retune.adapters.disk import write_all
 
-    return write_all(exported(takes_of(tuned), exporters, settings or {}), Path(folder))
+    files = exported_where_possible(takes_of(tuned), exporters, settings or {}, failed)
+    return write_all(files, Path(folder))
 
 
 def write_learning(
@@ -133,12 +161,13 @@ def write_learning(
     settings: Mapping[str, Settings] | None = None,
     archives: bool = False,
     progress: Progress | None = None,
+    failed: list[OutputError] | None = None,
 ) -> WriteReport:
     """Write a piece's takes and a text on how to use them: all files or none.
 
     Parameters
     ----------
-    exporters, settings
+    exporters, settings, failed
         As for `write`.
     archives : bool
         Also one zip archive for each section, of its tracks and the full mix.
@@ -151,7 +180,7 @@ def write_learning(
     from retune.export.archives import section_archives
     from retune.export.howto import how_to_use
 
-    files = exported(takes, exporters, settings or {})
+    files = exported_where_possible(takes, exporters, settings or {}, failed)
     files.append(how_to_use(takes, files))
     done = count(1)
     if progress is not None:

@@ -19,8 +19,8 @@ from retune.cli.options import (
     talk_options,
     tuning_options,
 )
-from retune.cli.report import report_findings, written_lines
-from retune.errors import WishError
+from retune.cli.report import raise_last, report_findings, written_lines
+from retune.errors import OutputError, WishError
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
@@ -86,14 +86,16 @@ def command(
         tuned = pipeline.retuned(source, name, reading, policy)
         if bars:
             tuned = pipeline.cut(tuned, bars)
+    failed: list[OutputError] = []
     if output == "-":
         notes = [_sent(pipeline.exported(pipeline.takes_of(tuned), chosen, wishes))]
     else:
         with working("Writing", quiet):
-            notes = written_lines(pipeline.write(tuned, chosen, output, wishes))
+            notes = written_lines(pipeline.write(tuned, chosen, output, wishes, failed))
     if not quiet:
         report_findings(tuned, all_findings)
         say("\n".join(notes))
+    raise_last(failed)
 
 
 def _sent(files: Sequence[Output]) -> str:

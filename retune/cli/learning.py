@@ -9,7 +9,8 @@ import click
 
 from retune.cli.console import progress_bar, say, working
 from retune.cli.options import grouped, source_of
-from retune.cli.report import report_findings, summary, written_lines
+from retune.cli.report import raise_last, report_findings, summary, written_lines
+from retune.errors import OutputError
 
 if TYPE_CHECKING:
     from retune.adapters.disk import WriteReport
@@ -51,10 +52,14 @@ def learn(
             tuned = pipeline.cut(tuned, bars)
         takes = pipeline.learning_tracks(tuned, practice.tracks)
     folder = output if output is not None else score.parent / tuned.score.stem
+    failed: list[OutputError] = []
     with progress_bar("Writing", quiet) as progress:
-        report = pipeline.write_learning(takes, folder, chosen, wishes, practice.archives, progress)
+        report = pipeline.write_learning(
+            takes, folder, chosen, wishes, practice.archives, progress, failed
+        )
     if not quiet:
         say(summary(tuned))
         report_findings(tuned, all_findings)
         say("\n".join(written_lines(report)))
+    raise_last(failed)
     return report

@@ -6,10 +6,13 @@ from typing import TYPE_CHECKING
 
 import click
 
-from retune.cli.console import print_findings, wrapped
+from retune.cli.console import print_error, print_findings, wrapped
 
 if TYPE_CHECKING:
+    from collections.abc import Sequence
+
     from retune.adapters.disk import WriteReport, WrittenFile
+    from retune.errors import OutputError
     from retune.tuning.model import TunedScore
     from retune.tuning.policy import Policy
 
@@ -93,3 +96,11 @@ def written_lines(report: WriteReport) -> list[str]:
             words = _about(file, not alone) + (f" (and {more} more like it)" if more else "")
             lines.append(wrapped(f"            {words}", " " * 12))
     return lines
+
+
+def raise_last(failed: Sequence[OutputError]) -> None:
+    """Tell of all outputs that failed while others were done, the last one as the error."""
+    for error in failed[:-1]:
+        print_error(error.what, error.where, error.hint)
+    if failed:
+        raise failed[-1]

@@ -24,7 +24,7 @@ from retune.page.engrave import (
     notehead_ids,
 )
 from retune.page.grid import grid
-from retune.score.model import Score
+from retune.score.model import Part, Score
 from retune.score.titles import part_titles
 from retune.tracks.guides import sung_parts
 from retune.tracks.take import Take
@@ -64,12 +64,16 @@ class PageExporter:
         tuned = takes[0].tuned
         if not tuned.score.notes:
             raise OutputError("there is no note to show", Place(tuned.score.file))
-        made = _Maker(tuned, options)
+        titles = part_titles(tuned.score)
+        wanted = {take.folder for take in takes if take.folder}
+        parts = [
+            part for part in sung_parts(tuned.score) if not wanted or titles[part.index] in wanted
+        ]
+        made = _Maker(tuned, options, parts)
         stem = safe_name(tuned.score.stem)
         yield LateFile(f"{stem}.html", lambda: made.page(None))
         if options.part_pages:
-            titles = part_titles(tuned.score)
-            for part in sung_parts(tuned.score):
+            for part in parts:
                 name = f"{stem} - {safe_name(titles[part.index])}.html"
                 yield LateFile(name, lambda index=part.index: made.page(index))  # type: ignore[misc]
 
@@ -77,8 +81,9 @@ class PageExporter:
 class _Maker:
     """What all pages of a piece share; made when the first of them is wanted."""
 
-    def __init__(self, tuned: TunedScore, options: PageOptions) -> None:
+    def __init__(self, tuned: TunedScore, options: PageOptions, parts: Sequence[Part]) -> None:
         self._tuned = tuned
+        self._parts = parts
         self._options = options
         self._lock = Lock()
         self._shared: _Shared | None = None
@@ -111,7 +116,7 @@ class _Maker:
         if self._options.widths:
             wishes |= {"narrow": Wish(NARROW), "wide": Wish(WIDE)}
         if self._options.part_lines:
-            for part in sung_parts(self._tuned.score):
+            for part in self._parts:
                 wishes[f"part{part.index}"] = Wish(PLAIN, part.index)
         try:
             found = engravings(self._tuned, self._tuned.score.source, tuple(wishes.values()))

@@ -400,3 +400,22 @@ def test_times_are_fractions() -> None:
         write_midi_file(RawMidi(1, 7, (RawTrack(((0, NoteOn(0, 60, 9)), (5, NoteOff(0, 60))), 5),)))
     )
     assert tuned.notes[0].note.duration == Fraction(5, 7)
+
+
+def test_a_bend_after_a_reset_at_the_same_tick_comes_back() -> None:
+    track = RawTrack(
+        (
+            (0, Bend(0, 9000)),
+            (0, NoteOn(0, 60, 80)),
+            (24, NoteOff(0, 60)),
+            (24, Control(0, 121, 0)),
+            (24, Bend(0, 9000)),
+            (24, NoteOn(0, 72, 80)),
+            (24, NoteOn(0, 62, 80)),
+            (48, NoteOff(0, 72)),
+            (48, NoteOff(0, 62)),
+        ),
+        58,
+    )
+    before = as_before(returned(RawMidi(1, TICKS, (track,))))
+    assert bend_curve(before.tracks[0], 0)[-1][1] == pytest.approx(19.73, abs=0.2)

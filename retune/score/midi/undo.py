@@ -25,6 +25,9 @@ from retune.adapters.midi_marker import Lanes, Share, range_setup, said_by
 
 _CENTRE = 8192
 _USUAL_RANGE = 2
+_RESET = 121
+"""Reset all controllers, which centres the bend too (General MIDI 2, 3.5.2)."""
+
 _SETUP = len(range_setup(0, 0))
 
 Timed = tuple[int, Event]
@@ -98,6 +101,8 @@ def _restored(event: Event, channels: dict[int, _Channel]) -> Iterator[Event]:
             if known.own_range and number == known.home:
                 yield from _own_bend(known, value)
         case Control() | Program() | ChannelPressure() if known is not None:
+            if isinstance(event, Control) and event.controller == _RESET:
+                known.written = _CENTRE
             if event.channel == known.home:
                 yield event
         case _:
