@@ -15,7 +15,7 @@ from typing import ClassVar
 from retune.adapters.midi import RawMidi, write_midi_file
 from retune.errors import OutputError, Place
 from retune.export.base import OutputFile
-from retune.export.bend import DEFAULT_RANGE
+from retune.export.bend import DEFAULT_RANGE, bend_step
 from retune.export.midi_channels import Channels, PartNeeds, allot, percussion
 from retune.export.midi_check import check_midi
 from retune.export.midi_conductor import conductor
@@ -131,7 +131,7 @@ def _file_of(take: Take, options: MidiOptions) -> OutputFile:
         file_name("midi", take),
         data,
         "; ".join([allotment.note, *remarks(score, ticks)]),
-        lambda found: check_midi(found, played, options.bend_range, tuple(strips)),
+        lambda found: check_midi(found, played, bend_step(options.bend_range), tuple(strips)),
     )
 
 

@@ -83,7 +83,7 @@ class _OpenLane:
             gone = [other for other in self.sounding if other.off <= note.on]
             self.released = max(self.released, *(other.stop for other in gone))
             self.sounding = still
-        return all(other.key != note.key and _agree(other, note) for other in still)
+        return all(other.key != note.key and agree(other, note) for other in still)
 
     def drags(self, note: PlannedNote) -> bool:
         """Whether the note would bend a tail that is still heard."""
@@ -98,7 +98,7 @@ class _OpenLane:
         self.last_off = max(self.last_off, note.off)
 
 
-def _agree(earlier: PlannedNote, later: PlannedNote) -> bool:
+def agree(earlier: PlannedNote, later: PlannedNote) -> bool:
     """Whether two notes want the same bends for as long as both sound."""
     if len(earlier.bends) == 1 and len(later.bends) == 1:
         return earlier.bends[0][1] == later.bends[0][1]

@@ -7,12 +7,14 @@ next it never leaves the span between the two.
 
 from __future__ import annotations
 
+import math
 from collections import defaultdict
-from collections.abc import Iterator, Mapping, Sequence
+from collections.abc import Callable, Iterator, Mapping, Sequence
+from fractions import Fraction
 
-from retune.adapters.midi import read_midi_file
+from retune.adapters.midi import RawMidi, read_midi_file
 from retune.errors import OutputError, RetuneError
-from retune.export.bend import bend_step, nearest_key
+from retune.export.bend import nearest_key
 from retune.export.midi_plan import pitch_of
 from retune.export.midi_receiver import HeardNote, heard_notes
 from retune.export.ticks import Ticks
@@ -24,6 +26,9 @@ _SLACK = 1e-6
 
 _FAULT = "This is a fault of retune; please report it with the score, if you may"
 
+Receiver = Callable[[RawMidi], list[HeardNote]]
+"""A synth: a file's notes as they sound."""
+
 _Target = tuple[float, TunedNote]
 """Pitch at the onset as a float key number, and the note."""
 
@@ -31,14 +36,16 @@ _Target = tuple[float, TunedNote]
 def check_midi(
     data: bytes,
     tuned: TunedScore,
-    bend_range: int,
+    step: float,
     parts: Sequence[int] | None = None,
-    one_track: bool = False,
+    tracks: Mapping[int, int] | None = None,
+    receive: Receiver = heard_notes,
 ) -> str:
-    """Compare a file's bytes with a tuned score.
+    """Compare a file's bytes with a tuned score; `step` is that of its pitches in cents.
 
-    `parts` are those that the file plays, in the order of its tracks; all of them by default. With
-    `one_track` all stand in the first track after the conductor.
+    `parts` are those that the file plays, in the order of its tracks after the conductor's; all
+    of them by default. Where the order is another, `tracks` gives the track of each part played.
+    `receive` is the synth: it makes of a file the notes that sound.
 
     Returns
     -------
@@ -49,34 +56,35 @@ def check_midi(
     ------
     OutputError
         A note is missing, too many, never released or struck twice, or its pitch is off by
-        more than half a bend step.
+        more than half a step.
     """
     try:
         raw = read_midi_file(data, Limits(max_bytes=len(data), max_notes=len(data)))
-        heard = heard_notes(raw)
+        heard = receive(raw)
     except RetuneError as error:
         raise OutputError(f"the MIDI file reads back wrong: {error.what}", hint=_FAULT) from error
     if not isinstance(raw.division, int):
         raise OutputError("the MIDI file reads back without ticks a quarter note", hint=_FAULT)
     played = range(len(tuned.score.parts)) if parts is None else parts
     # The conductor track comes before the parts.
-    tracks = {part: 1 if one_track else track for track, part in enumerate(played, start=1)}
-    bound = bend_step(bend_range) / 2 + _SLACK
-    comparison = _Comparison(tuned, tracks, Ticks(raw.division), bound)
+    if tracks is None:
+        tracks = {part: track for track, part in enumerate(played, start=1)}
+    comparison = _Comparison(tuned, tracks, Ticks(raw.division), step)
     worst = max((comparison.error(*pair) for pair in comparison.pairs(heard)), default=0.0)
     return f"read back: {len(heard):,} notes, greatest rounding error {worst:.4f} cents"
 
 
 class _Comparison:
-    """Compares notes heard with notes tuned; `bound` is in cents."""
+    """Compares notes heard with notes tuned; `step` is in cents."""
 
     def __init__(
-        self, tuned: TunedScore, tracks: Mapping[int, int], ticks: Ticks, bound: float
+        self, tuned: TunedScore, tracks: Mapping[int, int], ticks: Ticks, step: float
     ) -> None:
         self._tuned = tuned
         self._tracks = tracks
         self._ticks = ticks
-        self._bound = bound
+        self._step = step
+        self._bound = step / 2 + _SLACK
 
     def pairs(self, heard: list[HeardNote]) -> Iterator[tuple[HeardNote, TunedNote]]:
         """Every note heard with its tuned note: those of one part and onset, low to high."""
@@ -94,14 +102,20 @@ class _Comparison:
             track, tick = min(extra, key=lambda place: place[1])
             raise OutputError(f"track {track + 1} plays a note at tick {tick} that no part has")
         for place, wanted in targets.items():
-            # Of two parts in unison, a hair apart, their lengths tell which is which.
-            wanted.sort(
-                key=lambda target: (nearest_key(target[0]), target[1].note.duration, target[0])
-            )
-            there = sorted(found[place], key=lambda one: (one.key, one.off, one.pitch))
+            wanted.sort(key=self._rank)
+            there = sorted(found[place], key=lambda one: (one.key, one.off, one.pitch, one.last))
             if len(there) != len(wanted):
                 raise self._fault(wanted[0][1], f"sounds {len(there)} times, not {len(wanted)}")
             yield from zip(there, (note for _, note in wanted), strict=True)
+
+    def _rank(self, target: _Target) -> tuple[int, Fraction, int, float]:
+        """Key, length, steps above the key, and last pitch: they tell two notes in unison apart,
+        a hair from one another, in the order that they are heard in."""
+        pitch, note = target
+        key = nearest_key(pitch)
+        steps = math.floor(100.0 * (pitch - key) / self._step + 0.5)
+        last = pitch_of(self._tuned, note, note.segments[-1])
+        return key, note.note.duration, steps, last
 
     def error(self, heard: HeardNote, tuned: TunedNote) -> float:
         """Greatest error in cents; raises `OutputError` beyond the bound."""

@@ -61,12 +61,17 @@ def pitch_of(tuned: TunedScore, note: TunedNote, segment: Segment) -> float:
 
 @dataclass(frozen=True, slots=True)
 class Planner:
-    """Plans the notes of one score; the bend range is in semitones, a glide in seconds."""
+    """Plans the notes of one score.
+
+    The bend range is in semitones, a glide in seconds; `wider` is the option that widens the
+    range, for messages.
+    """
 
     tuned: TunedScore
     ticks: Ticks
     bend_range: int
     glide: float
+    wider: str = "midi.bend_range=12"
 
     def notes(self, parts: Container[int]) -> list[PlannedNote]:
         """All notes of these parts by onset, then part, then key.
@@ -143,7 +148,7 @@ class Planner:
                 f"{note.pitch.name} moves {farthest:+.1f} cents from its key while it sounds, "
                 f"and the bend range is {self.bend_range} semitones",
                 self.tuned.score.place(note.onset, note.part),
-                "Widen it with --set midi.bend_range=12",
+                f"Widen it with --set {self.wider}",
             )
 
 

@@ -32,6 +32,11 @@ class HeardNote:
     off: int = -1
     moves: list[tuple[int, float]] = field(default_factory=list)
 
+    @property
+    def last(self) -> float:
+        """The pitch at the note-off."""
+        return self.moves[-1][1] if self.moves else self.pitch
+
 
 @dataclass(slots=True)
 class _Channel:
@@ -67,7 +72,7 @@ def heard_notes(raw: RawMidi) -> list[HeardNote]:
     """
     channels = [_Channel() for _ in range(16)]
     heard: list[HeardNote] = []
-    for tick, track, event in _in_order(raw):
+    for tick, track, event in in_order(raw):
         match event:
             case NoteOn(channel, key, velocity) if velocity > 0:
                 state = channels[channel]
@@ -99,7 +104,8 @@ def _move(state: _Channel, tick: int) -> None:
         note.moves.append((tick, state.pitch(key)))
 
 
-def _in_order(raw: RawMidi) -> Iterator[tuple[int, int, Event]]:
+def in_order(raw: RawMidi) -> Iterator[tuple[int, int, Event]]:
+    """Tick, track and event of all events; at one tick, those of the earlier track first."""
     merged = [
         (tick, number, event)
         for number, track in enumerate(raw.tracks)
