@@ -20,7 +20,7 @@ from retune.export.midi_channels import Channels, PartNeeds, allot, percussion
 from retune.export.midi_check import check_midi
 from retune.export.midi_conductor import conductor
 from retune.export.midi_mix import VOICE_OOHS, file_name, mix_of, program_of, remarks, strips_of
-from retune.export.midi_plan import PlannedNote, Planner
+from retune.export.midi_plan import PlannedNote, Planner, bend_scale
 from retune.export.midi_return import returned, source_of
 from retune.export.midi_return_check import check_returned
 from retune.export.midi_tracks import part_tracks
@@ -110,7 +110,8 @@ def _file_of(take: Take, options: MidiOptions) -> OutputFile:
         raise OutputError("there is no note to write as MIDI", Place(score.file))
     ticks = ticks_for(played)
     strips = strips_of(take)
-    planned = Planner(played, ticks, options.bend_range, options.glide_ms / 1000.0).notes(strips)
+    scale = bend_scale(options.bend_range, "midi.bend_range=12")
+    planned = Planner(played, ticks, scale, options.glide_ms / 1000.0).notes(strips)
     by_part: dict[int, list[PlannedNote]] = {index: [] for index in strips}
     for note in planned:
         by_part[note.part].append(note)

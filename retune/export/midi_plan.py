@@ -4,13 +4,14 @@ Conventions
 -----------
 * `on` and `off` are ticks; `start` and `stop` are seconds by the tempo map.
 * A pitch is a float key number on the grid of A4 = 440 Hz, the reference pitch included.
-* `bends` are (tick, value) with ascending ticks; the first stands at `on`.
+* `bends` are (tick, value) with ascending ticks; the first stands at `on`. What a value says of
+  the pitch is the planner's `Scale`: a pitch bend, or part of a semitone.
 """
 
 from __future__ import annotations
 
 import math
-from collections.abc import Container, Iterator
+from collections.abc import Callable, Container, Iterator
 from dataclasses import dataclass, replace
 from itertools import pairwise
 
@@ -60,18 +61,51 @@ def pitch_of(tuned: TunedScore, note: TunedNote, segment: Segment) -> float:
 
 
 @dataclass(frozen=True, slots=True)
-class Planner:
-    """Plans the notes of one score.
+class Scale:
+    """How a file says how far a pitch is from its note's key.
 
-    The bend range is in semitones, a glide in seconds; `wider` is the option that widens the
-    range, for messages.
+    Parameters
+    ----------
+    value : callable
+        The number for a distance in cents.
+    lowest, highest : float
+        The farthest it reaches, in cents.
+    bound : str
+        What sets the reach, for messages.
+    hint : str
+        How to reach farther.
+    pace : float
+        The least time between two steps of a glide, in seconds.
     """
+
+    value: Callable[[float], int]
+    lowest: float
+    highest: float
+    bound: str
+    hint: str
+    pace: float = _GLIDE_STEP_SECONDS
+
+
+def bend_scale(bend_range: int, wider: str) -> Scale:
+    """Pitch bends with a range in semitones; `wider` is the option for a wider one."""
+    reach = 100.0 * bend_range
+    return Scale(
+        lambda cents: bend_value(cents, bend_range),
+        -reach,
+        reach - bend_step(bend_range) / 2,
+        f"the bend range is {bend_range} semitones",
+        f"Widen it with --set {wider}",
+    )
+
+
+@dataclass(frozen=True, slots=True)
+class Planner:
+    """Plans the notes of one score; a glide is in seconds."""
 
     tuned: TunedScore
     ticks: Ticks
-    bend_range: int
+    scale: Scale
     glide: float
-    wider: str = "midi.bend_range=12"
 
     def notes(self, parts: Container[int]) -> list[PlannedNote]:
         """All notes of these parts by onset, then part, then key.
@@ -93,7 +127,7 @@ class Planner:
         pitches = [pitch_of(self.tuned, tuned_note, segment) for segment in segments]
         key = nearest_key(pitches[0])
         self._require_reach(tuned_note, key, pitches)
-        bends = [(on, bend_value(100.0 * (pitches[0] - key), self.bend_range))]
+        bends = [(on, self.scale.value(100.0 * (pitches[0] - key)))]
         for (before, after), segment in zip(pairwise(pitches), segments[1:], strict=True):
             if before != after:
                 cents = (100.0 * (before - key), 100.0 * (after - key))
@@ -124,16 +158,16 @@ class Planner:
         before, after = cents
         steps = min(
             math.ceil(abs(after - before) / _GLIDE_STEP_CENTS),
-            math.floor(span / _GLIDE_STEP_SECONDS),
+            math.floor(span / self.scale.pace),
         )
         for step in range(1, steps):
             tick = start + length * (step - 1) // (steps - 1)
             value = before + (after - before) * step / steps
-            yield tick, bend_value(value, self.bend_range)
-        yield start + (length if steps > 1 else 0), bend_value(after, self.bend_range)
+            yield tick, self.scale.value(value)
+        yield start + (length if steps > 1 else 0), self.scale.value(after)
 
     def _require_reach(self, tuned_note: TunedNote, key: int, pitches: list[float]) -> None:
-        """Raise `OutputError` for a key that MIDI lacks or a bend beyond the range."""
+        """Raise `OutputError` for a key that MIDI lacks or a pitch beyond the reach."""
         note = tuned_note.note
         if not 0 <= key <= 127:
             raise OutputError(
@@ -141,14 +175,13 @@ class Planner:
                 self.tuned.score.place(note.onset, note.part),
                 "Transpose the score, or leave the part out",
             )
-        reach = 100.0 * self.bend_range
         farthest = max((100.0 * (pitch - key) for pitch in pitches), key=abs)
-        if not -reach <= farthest <= reach - bend_step(self.bend_range) / 2:
+        if not self.scale.lowest <= farthest <= self.scale.highest:
             raise OutputError(
                 f"{note.pitch.name} moves {farthest:+.1f} cents from its key while it sounds, "
-                f"and the bend range is {self.bend_range} semitones",
+                f"and {self.scale.bound}",
                 self.tuned.score.place(note.onset, note.part),
-                f"Widen it with --set {self.wider}",
+                self.scale.hint,
             )
 
 

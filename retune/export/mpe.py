@@ -36,7 +36,7 @@ from retune.export.midi_channels import PERCUSSION
 from retune.export.midi_check import check_midi
 from retune.export.midi_conductor import conductor
 from retune.export.midi_mix import VOICE_OOHS, file_name, program_of, remarks, strips_of
-from retune.export.midi_plan import PlannedNote, Planner
+from retune.export.midi_plan import PlannedNote, Planner, bend_scale
 from retune.export.midi_text import lyric_bytes, text_bytes
 from retune.export.midi_tracks import CENTRE
 from retune.export.mpe_members import Members, allotted
@@ -127,9 +127,8 @@ def _file_of(take: Take, options: MpeOptions) -> OutputFile:
         raise OutputError("there is no note to write as MPE", Place(score.file))
     strips, ticks = strips_of(take), ticks_for(played)
     tracks = _tracks_of(score, strips, options.members)
-    planner = Planner(
-        played, ticks, options.bend_range, options.glide_ms / 1000.0, "mpe.bend_range=48"
-    )
+    scale = bend_scale(options.bend_range, "mpe.bend_range=48")
+    planner = Planner(played, ticks, scale, options.glide_ms / 1000.0)
     planned = [_levelled(note, strips[note.part]) for note in planner.notes(tracks)]
     notes = [note for note in planned if tracks[note.part] == _ZONE_TRACK]
     clicks = [note for note in planned if tracks[note.part] == _CLICK_TRACK]
