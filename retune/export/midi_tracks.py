@@ -28,7 +28,7 @@ from retune.export.midi_text import lyric_bytes, text_bytes
 _OFF, _SETUP, _BEND, _LYRIC, _ON = range(5)
 
 _VOLUME, _PAN, _RESET_CONTROLLERS = 7, 10, 121
-_FULL_VOLUME = 100
+FULL_VOLUME = 100
 """The level General MIDI 2 gives a channel that was told none."""
 
 CENTRE = 64
@@ -45,7 +45,7 @@ def volume(gain_db: float) -> int:
     >>> volume(0.0), volume(-9.0), volume(-100.0)
     (100, 60, 0)
     """
-    return min(round(_FULL_VOLUME * math.pow(10.0, gain_db / 40.0)), 127)
+    return min(round(FULL_VOLUME * math.pow(10.0, gain_db / 40.0)), 127)
 
 
 def pan(place: float) -> int:
@@ -82,7 +82,7 @@ def part_tracks(
     timed: dict[int, list[Timed]] = {part: [] for part in names}
     for lane in lanes:
         home = lane.notes[0].part
-        level, place = mix[home] if len(lane.parts) == 1 else (_FULL_VOLUME, CENTRE)
+        level, place = mix[home] if len(lane.parts) == 1 else (FULL_VOLUME, CENTRE)
         timed[home].extend((_SETUP, event) for event in _setup(lane, level, place, bend_range))
         for part, tick, bend in _bends(lane):
             timed[part].append((tick * _RANKS + _BEND, bend))

@@ -65,7 +65,16 @@ def _track(body: bytes) -> Chunk:
                 assert length == 0
                 return chunk
             continue
-        assert body[at] not in (0xF0, 0xF7), "no system exclusive expected"
+        assert body[at] != 0xF7, "no split system exclusive expected"
+        if body[at] == 0xF0:
+            # The length counts the F7 at the end, not the F0.
+            length, at = _vlq(body, at + 1)
+            value, at, status = body[at : at + length], at + length, None
+            assert value[-1] == 0xF7
+            assert all(byte < 128 for byte in value[:-1])
+            chunk.events.append((tick, 0xF0, value[:-1]))
+            chunk.order.append((tick, 0xF0, value[:-1]))
+            continue
         if body[at] >= 0x80:
             status, at = body[at], at + 1
         assert status is not None, "running status without a status"
@@ -118,6 +127,7 @@ def receive(smf: Smf) -> tuple[list[Tone], list[BendEvent]]:
     live: dict[tuple[int, int], Tone] = {}
     bends: list[BendEvent] = []
     for tick, number, _, status, value in merged:
+        assert status != 0xF0, "no system exclusive expected"
         kind, channel = status >> 4, status & 15
         if kind == 9 and value[1]:
             assert (channel, value[0]) not in live, "a sounding key is struck again"
