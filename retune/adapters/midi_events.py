@@ -93,6 +93,8 @@ class MetaType(IntEnum):
     MARKER = 0x06
     CUE = 0x07
     PROGRAM_NAME = 0x08
+    PORT = 0x21
+    """Unofficial, but widely read: the port or cable that a track's messages go to."""
     END_OF_TRACK = 0x2F
     TEMPO = 0x51
     TIME_SIGNATURE = 0x58

@@ -47,6 +47,10 @@ class MidiOptions:
         default=Channels.AUTO,
         metadata={"help": "channels a part: two, one, or auto for two while they fit"},
     )
+    ports: bool = field(
+        default=False,
+        metadata={"help": "parts beyond 15 channels go to further MIDI ports"},
+    )
     bend_range: int = field(
         default=DEFAULT_RANGE,
         metadata={"help": "pitch bend range in semitones", "least": 1, "most": 24},
@@ -121,7 +125,7 @@ def _file_of(take: Take, options: MidiOptions) -> OutputFile:
         for index, notes in by_part.items()
         if index not in clicks
     ]
-    allotment = allot(score, needs, options.channels)
+    allotment = allot(score, needs, options.channels, options.ports)
     lanes = [*allotment.lanes, *(percussion(by_part[index]) for index in clicks)]
     end = max(ticks.at(score.end), *(note.off for note in planned))
     titles = part_titles(score)

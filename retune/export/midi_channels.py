@@ -27,6 +27,11 @@ TAIL_SECONDS = 0.25
 """How long a release tail is taken to be heard (our choice: about that of a sung sound)."""
 
 
+_PER_PORT = len(CHANNELS)
+_MOST_PORTS = 128
+"""The port's number is one byte of seven bits."""
+
+
 class Channels(StrEnum):
     """How many channels a part gets."""
 
@@ -46,11 +51,13 @@ class PartNeeds:
 
 @dataclass(frozen=True, slots=True)
 class Lane:
-    """One channel with its program and its notes by onset; `parts` are those that use it."""
+    """One channel with its program and its notes by onset; `parts` are those that use it, `port`
+    is the MIDI port that it belongs to."""
 
     channel: int
     program: int
     notes: tuple[PlannedNote, ...]
+    port: int = 0
 
     @property
     def parts(self) -> frozenset[int]:
@@ -151,7 +158,9 @@ def _alternating(part: PartNeeds, tight: list[_OpenLane]) -> list[_OpenLane]:
     return _spread(part, 2 * len(tight)) or tight
 
 
-def allot(score: Score, parts: Sequence[PartNeeds], wish: Channels) -> Allotment:
+def allot(
+    score: Score, parts: Sequence[PartNeeds], wish: Channels, ports: bool = False
+) -> Allotment:
     """Give every note its channel.
 
     Parameters
@@ -163,6 +172,8 @@ def allot(score: Score, parts: Sequence[PartNeeds], wish: Channels) -> Allotment
     wish : Channels
         Two alternating channels a part (an error if there are too few), one (or as few as the
         part's own notes need), or two while they fit.
+    ports : bool
+        Whether parts that do not fit on the channels of one MIDI port go to further ones.
 
     Raises
     ------
@@ -175,10 +186,13 @@ def allot(score: Score, parts: Sequence[PartNeeds], wish: Channels) -> Allotment
         two = [_alternating(part, tight) for part, tight in zip(parts, one, strict=True)]
         if _count(two) <= len(CHANNELS):
             return _numbered(two, "two alternating channels a part")
+        if wish is Channels.TWO and ports:
+            return _on_ports(score, parts, two, one)
         if wish is Channels.TWO:
             raise OutputError(
                 f"two channels a part make {_count(two)}, and MIDI has {len(CHANNELS)} for pitch",
-                hint="Leave out midi.channels=two; as many as fit are then used",
+                hint="Leave out midi.channels=two; as many as fit are then used. Or allow several "
+                "MIDI ports with --set midi.ports=true",
             )
         mixed = [
             wide if part.tuned else tight for part, wide, tight in zip(parts, two, one, strict=True)
@@ -187,7 +201,53 @@ def allot(score: Score, parts: Sequence[PartNeeds], wish: Channels) -> Allotment
             return _numbered(mixed, "two alternating channels a voice")
     if _count(one) <= len(CHANNELS):
         return _numbered(one, "one channel a part")
+    if ports:
+        return _on_ports(score, parts, one if wish is Channels.ONE else two, one)
     return _shared(score, parts, _count(one))
+
+
+def _on_ports(
+    score: Score,
+    parts: Sequence[PartNeeds],
+    wide: Sequence[list[_OpenLane]],
+    tight: Sequence[list[_OpenLane]],
+) -> Allotment:
+    """Every part with its channels on one port, the first that has room for all of them.
+
+    A part gets the channels of `wide`, or of `tight` where those are more than a port has.
+    """
+    ports: list[list[Lane]] = []
+    for part, most, least in zip(parts, wide, tight, strict=True):
+        lanes = most if len(most) <= _PER_PORT else least
+        if len(lanes) > _PER_PORT:
+            raise _too_few(
+                score,
+                part.notes[0],
+                f"this part needs {len(lanes)} channels for its different bends, and a MIDI port "
+                f"has {_PER_PORT} for pitch",
+            )
+        room = (n for n, port in enumerate(ports) if len(port) + len(lanes) <= _PER_PORT)
+        place = next(room, len(ports))
+        if place == _MOST_PORTS:
+            raise _too_few(
+                score, part.notes[0], f"a MIDI file can name no more than {_MOST_PORTS} ports"
+            )
+        if place == len(ports):
+            ports.append([])
+        port = ports[place]
+        for lane in lanes:
+            port.append(Lane(CHANNELS[len(port)], lane.program, tuple(lane.notes), place))
+    made = tuple(lane for port in ports for lane in port)
+    words = "one channel a part" if wide is tight else "two alternating channels a part"
+    return Allotment(
+        made,
+        f"{words}, {len(made)} in all on {len(ports)} MIDI ports, which not every program reads",
+    )
+
+
+def _too_few(score: Score, note: PlannedNote, what: str) -> OutputError:
+    place = score.place(score.notes[note.note].onset, note.part)
+    return OutputError(what, place, "Export a score with fewer parts")
 
 
 def lanes_for(part: PartNeeds, wide: bool) -> list[tuple[PlannedNote, ...]]:
@@ -266,6 +326,6 @@ def _overfull(score: Score, note: PlannedNote, lanes: Sequence[_OpenLane]) -> Ou
         f"{len(sounding) + 1} notes sound here, and no channel is left for their different bends: "
         f"MIDI has {len(CHANNELS)} for pitch",
         score.place(score.notes[note.note].onset, note.part),
-        "Name instruments with --accompaniment, so that they share a channel, or export a score "
-        "with fewer parts",
+        "Name instruments with --accompaniment, so that they share a channel, allow several MIDI "
+        "ports with --set midi.ports=true, or export a score with fewer parts",
     )

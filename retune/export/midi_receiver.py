@@ -6,11 +6,22 @@ grid of A4 = 440 Hz; of events at one tick, those of the earlier track come firs
 
 from __future__ import annotations
 
+from collections import defaultdict
 from collections.abc import Iterator
 from dataclasses import dataclass, field
 from operator import itemgetter
 
-from retune.adapters.midi import Bend, Control, Event, NoteOff, NoteOn, RawMidi
+from retune.adapters.midi import (
+    Bend,
+    Control,
+    Event,
+    Meta,
+    MetaType,
+    NoteOff,
+    NoteOn,
+    RawMidi,
+    RawTrack,
+)
 from retune.errors import OutputError
 from retune.export.bend import DEFAULT_RANGE, MIDDLE, bend_cents
 
@@ -70,33 +81,41 @@ def heard_notes(raw: RawMidi) -> list[HeardNote]:
     Raises `OutputError` where a key is struck while it sounds or is never released: a synth
     would cut one note off or let it hang.
     """
-    channels = [_Channel() for _ in range(16)]
+    ports = {number: _port(track) for number, track in enumerate(raw.tracks)}
+    states: defaultdict[tuple[int, int], _Channel] = defaultdict(_Channel)
     heard: list[HeardNote] = []
     for tick, track, event in in_order(raw):
+        port = ports[track]
         match event:
             case NoteOn(channel, key, velocity) if velocity > 0:
-                state = channels[channel]
+                state = states[port, channel]
                 if key in state.sounding:
                     raise OutputError(f"key {key} is struck twice on channel {channel + 1}")
                 note = HeardNote(track, key, tick, state.pitch(key))
                 state.sounding[key] = note
                 heard.append(note)
             case NoteOff(channel, key) | NoteOn(channel, key):
-                if (ended := channels[channel].sounding.pop(key, None)) is not None:
+                if (ended := states[port, channel].sounding.pop(key, None)) is not None:
                     ended.off = tick
             case Bend(channel, value):
-                state = channels[channel]
+                state = states[port, channel]
                 state.bend = value
                 _move(state, tick)
             case Control(channel, controller, value):
-                state = channels[channel]
+                state = states[port, channel]
                 state.control(controller, value)
                 _move(state, tick)
             case _:
                 pass
-    if any(channel.sounding for channel in channels):
+    if any(state.sounding for state in states.values()):
         raise OutputError("a note is never released")
     return heard
+
+
+def _port(track: RawTrack) -> int:
+    """The port of a track: of each, all sixteen channels are others (FF 21 01 pp)."""
+    said = (event for _, event in track.events if isinstance(event, Meta))
+    return next((event.data[0] for event in said if event.type == MetaType.PORT), 0)
 
 
 def _move(state: _Channel, tick: int) -> None:

@@ -92,6 +92,11 @@ def part_tracks(
             events.append((off + _OFF, NoteOff(lane.channel, note.key)))
             if words := lyric_bytes(note.lyric):
                 events.append((on + _LYRIC, Meta(MetaType.LYRIC, words)))
+    ports = {lane.notes[0].part: lane.port for lane in lanes}
+    if any(ports.values()):
+        # One for each track, before all that goes to the port.
+        for part, port in ports.items():
+            timed[part].insert(0, (_SETUP, Meta(MetaType.PORT, bytes((port,)))))
     for part, channels in _own_channels(lanes).items():
         timed[part].insert(0, (_SETUP, marker_of(Lanes(channels))))
     return [_track(names[part], events, end) for part, events in timed.items()]

@@ -114,21 +114,27 @@ class BendEvent:
 
 
 def receive(smf: Smf) -> tuple[list[Tone], list[BendEvent]]:
-    """All tones and all bends, tracks taken in file order at each tick."""
+    """All tones and all bends, tracks taken in file order at each tick.
+
+    Channels count on from port to port (FF 21 01 pp), 16 on each.
+    """
+    ports = [[v[0] for _, kind, v in t.metas if kind == 0x21] or [0] for t in smf.tracks]
     merged = sorted(
         (tick, number, place, status, value)
         for number, track in enumerate(smf.tracks)
         for place, (tick, status, value) in enumerate(track.events)
     )
-    bend = dict.fromkeys(range(16), 8192)
-    semitones = dict.fromkeys(range(16), 2.0)
-    rpn = {channel: [127, 127] for channel in range(16)}
+    channels = range(16 * (1 + max(port for found in ports for port in found)))
+    bend = dict.fromkeys(channels, 8192)
+    semitones = dict.fromkeys(channels, 2.0)
+    rpn = {channel: [127, 127] for channel in channels}
     tones: list[Tone] = []
     live: dict[tuple[int, int], Tone] = {}
     bends: list[BendEvent] = []
     for tick, number, _, status, value in merged:
         assert status != 0xF0, "no system exclusive expected"
-        kind, channel = status >> 4, status & 15
+        (port,) = ports[number]
+        kind, channel = status >> 4, 16 * port + (status & 15)
         if kind == 9 and value[1]:
             assert (channel, value[0]) not in live, "a sounding key is struck again"
             cents = 100 * value[0] + (bend[channel] - 8192) / 8192 * semitones[channel] * 100
