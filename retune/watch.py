@@ -9,7 +9,7 @@ from pathlib import Path
 
 from retune.adapters.disk import WriteReport
 from retune.adapters.watching import saves
-from retune.errors import LimitError, UnreadableError
+from retune.errors import LimitError, OutputError, UnreadableError
 from retune.score.read import stem_of
 
 
@@ -31,8 +31,7 @@ def watch(files: Sequence[Path], make: Callable[[], WriteReport]) -> Iterator[Ru
     """Make at once and after each save of one of the files; yields what came of each.
 
     A run that fails is told of with its error, as where a score is saved by halves or gone for
-    a while. The first run must do better: what it raises is raised here, unless the score
-    cannot be read.
+    a while. Of the first run, a wish that does not fit the score and a fault are raised here.
 
     Raises `KeyboardInterrupt` where it is interrupted, with nothing half written.
     """
@@ -43,7 +42,7 @@ def watch(files: Sequence[Path], make: Callable[[], WriteReport]) -> Iterator[Ru
             report = make()
         # Whatever a damaged score brings about, the next save may be well again.
         except Exception as error:
-            if number == 0 and not isinstance(error, UnreadableError | LimitError):
+            if number == 0 and not isinstance(error, UnreadableError | LimitError | OutputError):
                 raise
             failed = error
         yield Run(report, failed, time.monotonic() - begin)

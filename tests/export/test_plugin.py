@@ -207,19 +207,27 @@ FAULTS = {
 }
 
 
+LATE = {"late contents are no bytes", "late contents raise", "check raises", "check says no text"}
+"""Faults that are met while files are written, which are all written together or not at all."""
+
+
 @pytest.mark.parametrize("case", FAULTS)
-def test_a_fault_names_output_and_distribution_and_nothing_is_written(
+def test_a_fault_names_output_and_distribution_and_none_of_its_files_is_written(
     install: Install, call: Call, tmp_path: Path, case: str
 ) -> None:
     lines, words = FAULTS[case]
     install(exporting(*lines))
-    code, _, err = call("export", HYMN, "--to", "notes", "--to", "bad", "-o", tmp_path / "out")
+    out = tmp_path / "out"
+    code, _, err = call("export", HYMN, "--to", "notes", "--to", "bad", "-o", out)
     assert code == 1, err
-    assert err.startswith("Error: the output bad of misbehaving 2.0 ")
+    assert "Error: the output bad of misbehaving 2.0 " in err
     assert words in err
     assert "Traceback" not in err
     assert "inside retune" not in err
-    assert not (tmp_path / "out").exists()
+    written = {path.name for path in out.rglob("*") if path.is_file() and path.name[0] != "."}
+    notes = {"harbour-hymn.notes.csv", "harbour-hymn.notes.json"}
+    assert written == (set() if case in LATE else notes)
+    assert out.exists() == (case not in LATE)
     assert not (tmp_path / "a.txt").exists()
 
 
