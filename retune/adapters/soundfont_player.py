@@ -51,7 +51,7 @@ def library() -> ModuleType:
     # Without the C library the package raises whatever its search ends with.
     except Exception as error:
         raise OutputError("no FluidSynth is there to play a sound font", hint=_INSTALL) from error
-    return fluidsynth  # type: ignore[no-any-return]
+    return fluidsynth  # type: ignore[no-any-return]  # it has no types
 
 
 class Player:

@@ -5,6 +5,7 @@ from __future__ import annotations
 import re
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass, field, replace
+from functools import partial
 from threading import Lock
 from typing import Any, ClassVar
 
@@ -71,11 +72,11 @@ class PageExporter:
         ]
         made = _Maker(tuned, options, parts)
         stem = safe_name(tuned.score.stem)
-        yield LateFile(f"{stem}.html", lambda: made.page(None))
+        yield LateFile(f"{stem}.html", partial(made.page, None))
         if options.part_pages:
             for part in parts:
                 name = f"{stem} - {safe_name(titles[part.index])}.html"
-                yield LateFile(name, lambda index=part.index: made.page(index))  # type: ignore[misc]
+                yield LateFile(name, partial(made.page, part.index))
 
 
 class _Maker:

@@ -125,7 +125,7 @@ class _Tables(Sequence[Table]):
     def __len__(self) -> int:
         return len(self._colours)
 
-    def __getitem__(self, place: int) -> Table:  # type: ignore[override]
+    def __getitem__(self, place: int) -> Table:  # type: ignore[override]  # no slices here
         return table_of(self._colours[place])
 
 
