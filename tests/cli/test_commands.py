@@ -130,7 +130,9 @@ def test_exporters_lists_options(run: Run) -> None:
     assert max(len(line) for line in done.out.splitlines()) <= 80
 
 
-@pytest.mark.parametrize("command", ["make", "tracks", "show", "export", "watch", "play", "exporters"])
+@pytest.mark.parametrize(
+    "command", ["make", "tracks", "show", "export", "watch", "play", "exporters"]
+)
 def test_help_has_examples(run: Run, command: str) -> None:
     done = run(command, "--help")
     assert done.code == 0
