@@ -102,8 +102,8 @@ class MtsExporter:
         Raises
         ------
         OutputError
-            There are too few channels or tuning programs, or a pitch is beyond what the message
-            can say; bar and beat are named.
+            There are too few channels, or a pitch is beyond what the message can say; bar and
+            beat are named.
         WishError
             An option is out of its range.
         """
@@ -185,7 +185,7 @@ def _messages(tuned: TunedScore, lanes: Sequence[Lane], form: Form) -> Tables:
     """What the channels are told, by the form chosen."""
     if form is Form.BULK:
         ground = word_value(reference_offset(tuned.policy.reference_hz))
-        return tables(tuned.score, lanes, ground)
+        return tables(lanes, ground)
     write = octave_messages if form is Form.OCTAVE else single_messages
     return Tables((), tuple(told for lane in lanes for told in write(lane)))
 
@@ -202,7 +202,8 @@ def _unmoved(tuned: TunedScore) -> TunedScore:
 def _density(tuned: TunedScore, made: Tables, ticks: Ticks) -> Iterator[str]:
     """How many messages there are, and how many in the busiest minute."""
     if made.dumps:
-        yield f"{len(made.dumps)} tables of 408 bytes at the start"
+        more = f", {made.later:,} more on the way" if made.later else ""
+        yield f"{len(made.dumps)} tables of 408 bytes at the start{more}"
     if not made.told:
         yield "no message, as all keys stand where they are"
         return

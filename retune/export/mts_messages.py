@@ -9,13 +9,12 @@ from __future__ import annotations
 from collections import defaultdict
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass, field
+from itertools import chain
 
 from retune.adapters.midi import Control, Event, Sysex
-from retune.errors import OutputError
 from retune.export.midi_channels import Lane
 from retune.export.midi_plan import PlannedNote
 from retune.export.mts_words import FRACTION, MOST_KEYS, bulk, octave, single_notes
-from retune.score.model import Score
 
 _RPN_MSB, _RPN_LSB, _DATA_MSB, _TUNING_PROGRAM = 101, 100, 6, 3
 _MOST_TABLES = 128
@@ -85,71 +84,92 @@ def _wanted(lane: Lane) -> Iterator[tuple[int, dict[int, dict[int, int]]]]:
 
 @dataclass(slots=True, eq=False)
 class _Table:
-    """A tuning program while keys are being put into it."""
+    """A tuning program while keys are being put into it; `since` is the tick of its dump, -1 for
+    the start of the piece, `used` the last tick that it was chosen at."""
 
     number: int
+    since: int = -1
+    used: int = -1
     keys: dict[int, int] = field(default_factory=dict)
 
     def takes(self, keys: Mapping[int, int]) -> bool:
         return all(self.keys.get(key, value) == value for key, value in keys.items())
 
+    def dump(self, ground: int) -> Sysex:
+        pitches = [key * FRACTION + self.keys.get(key, ground) for key in range(128)]
+        return Sysex(bulk(self.number, f"Chords {self.number + 1}", pitches))
+
 
 @dataclass(frozen=True, slots=True)
 class Tables:
-    """Bulk dumps for the start of the piece, and where each channel takes which."""
+    """Bulk dumps for the start of the piece, what each channel is told after it, and how many
+    more dumps are in that."""
 
     dumps: tuple[Sysex, ...]
     told: tuple[Told, ...]
+    later: int = 0
 
 
-def tables(score: Score, lanes: Sequence[Lane], ground: int) -> Tables:
+def tables(lanes: Sequence[Lane], ground: int) -> Tables:
     """As few tuning programs as hold every chord of every channel; a held note keeps the pitch
     that it began with. Keys that never sound stand at `ground`.
 
-    Raises `OutputError` where 128 programs are too few, with bar and beat.
+    Where 128 programs are too few, the one that no channel has chosen for the longest time is
+    sent anew, in the track of the notes that need it.
     """
-    made: list[_Table] = []
-    told: list[Told] = []
-    for lane in lanes:
-        current: _Table | None = None
-        for tick, struck, keys in _chords(lane):
-            if current is None or not current.takes(keys):
-                current = next((table for table in made if table.takes(keys)), None)
-                if current is None:
-                    if len(made) == _MOST_TABLES:
-                        raise _too_many(score, struck[0])
-                    current = _Table(len(made))
-                    made.append(current)
-                for part in {note.part for note in struck}:
-                    told.append(Told(part, tick, select(lane.channel, current.number)))
-            current.keys.update(keys)
-    dumps = tuple(
-        Sysex(
-            bulk(
-                table.number,
-                f"Chords {table.number + 1}",
-                [key * FRACTION + table.keys.get(key, ground) for key in range(128)],
-            )
-        )
-        for table in made
-    )
-    return Tables(dumps, tuple(told))
+    programs: list[_Table] = []
+    chosen: dict[int, _Table] = {}
+    choices: list[tuple[_Struck, _Table]] = []
+    for chord in sorted(chain.from_iterable(map(_chords, lanes)), key=lambda one: one.tick):
+        table = chosen.get(chord.channel)
+        if table is None or not table.takes(chord.keys):
+            # A table that is sent at this very tick may come after this track's notes.
+            ready = (one for one in programs if one.since < chord.tick and one.takes(chord.keys))
+            table = next(ready, None) or _fresh(programs, chosen, chord.tick)
+            chosen[chord.channel] = table
+            choices.append((chord, table))
+        table.keys.update(chord.keys)
+        table.used = chord.tick
+    later = {id(table): table for _, table in choices if table.since >= 0}
+    told = [
+        Told(part, chord.tick, (*sent, *select(chord.channel, table.number)))
+        for chord, table in choices
+        for sent in [(table.dump(ground),) if table.since == chord.tick else ()]
+        for part in sorted(chord.parts)
+    ]
+    start = {table.number: table for _, table in choices if table.since < 0}
+    return Tables(tuple(table.dump(ground) for table in start.values()), tuple(told), len(later))
 
 
-def _chords(lane: Lane) -> Iterator[tuple[int, list[PlannedNote], dict[int, int]]]:
-    """At each tick where notes are struck: these, and the first value of all keys that sound."""
+def _fresh(programs: list[_Table], chosen: Mapping[int, _Table], tick: int) -> _Table:
+    """An empty table, in a program that none has had or that no channel needs any more."""
+    if len(programs) < _MOST_TABLES:
+        table = _Table(len(programs))
+        programs.append(table)
+        return table
+    idle = (one for one in programs if all(one is not other for other in chosen.values()))
+    number = min(idle, key=lambda one: one.used).number
+    programs[number] = _Table(number, tick)
+    return programs[number]
+
+
+@dataclass(frozen=True, slots=True)
+class _Struck:
+    """What a channel strikes at a tick: in the tracks of which parts, and the first value of
+    every key that sounds then."""
+
+    channel: int
+    tick: int
+    parts: frozenset[int]
+    keys: dict[int, int]
+
+
+def _chords(lane: Lane) -> Iterator[_Struck]:
     by_tick: dict[int, list[PlannedNote]] = defaultdict(list)
     for note in lane.notes:
         by_tick[note.on].append(note)
     sounding: list[PlannedNote] = []
     for tick, struck in sorted(by_tick.items()):
         sounding = [*(note for note in sounding if note.off > tick), *struck]
-        yield tick, struck, {note.key: note.bends[0][1] for note in sounding}
-
-
-def _too_many(score: Score, note: PlannedNote) -> OutputError:
-    return OutputError(
-        f"the chords need more than the {_MOST_TABLES} tuning programs there are",
-        score.place(score.notes[note.note].onset, note.part),
-        "Leave out mts.form=bulk, or export fewer bars",
-    )
+        keys = {note.key: note.bends[0][1] for note in sounding}
+        yield _Struck(lane.channel, tick, frozenset(note.part for note in struck), keys)

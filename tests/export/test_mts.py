@@ -184,12 +184,18 @@ def test_tables_are_as_many_as_one_key_has_tunings() -> None:
     assert [tick for tick, _ in sysex(file)] == [0, 0, 0]
 
 
-def test_more_tables_than_tuning_programs_are_refused_by_place() -> None:
-    notes = [sung(0, n, "E4", (1, 0.1 * n)) for n in range(129)]
-    with pytest.raises(OutputError, match="128 tuning programs") as caught:
-        written(tuned_score(notes, parts=["Alto"]), Form.BULK)
-    assert caught.value.where is not None
-    assert (caught.value.where.bar, caught.value.where.beat) == ("33", "1")
+def test_of_more_tables_than_tuning_programs_the_idle_ones_are_sent_anew() -> None:
+    """128 programs there are; three parts need 150 tables, some of them together."""
+    notes = [
+        sung(part, n, "E4", (1, 0.1 * ((n + shift) % 150)))
+        for part, shift in enumerate((0, 2, 149))
+        for n in range(200)
+    ]
+    piece = tuned_score(notes)
+    file = written(piece, Form.BULK)
+    require_tuned(piece, file, Form.BULK)
+    assert "128 tables of 408 bytes at the start, " in file.note
+    assert max(data[4] for track in (1, 2, 3) for _, data in sysex(file, track)) == 127
 
 
 def test_one_key_twice_in_one_part_takes_a_second_channel() -> None:
