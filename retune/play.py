@@ -33,7 +33,7 @@ from retune.adapters.midi import (
     read_midi_file,
 )
 from retune.adapters.ports import Port
-from retune.errors import RetuneError
+from retune.errors import RetuneError, WishError
 from retune.limits import Limits
 from retune.pipeline import Settings, exported, takes_of
 from retune.score.midi.conductor import conductor_of, in_sequence, ticks_per_quarter
@@ -99,6 +99,10 @@ def programme_of(tuned: TunedScore, settings: Settings | None = None) -> Program
 
     Raises what that exporter raises, for `settings` too.
     """
+    for name in set(settings or {}) & {"ports", "parts"}:
+        raise WishError(
+            f"midi.{name} is not for playing: all parts go to one port", hint="Leave it out"
+        )
     wishes: Mapping[str, Settings] = {"midi": settings or {}}
     (file,) = exported(takes_of(tuned), ("midi",), wishes)
     data = file.data

@@ -581,3 +581,9 @@ def test_a_terminal_shows_the_position_in_one_line(hymn: Path) -> None:
     assert "2 of 2" in shown[-1]
     # The line is wiped away at the end.
     assert text.decode().endswith("\r") or text.decode().split("\r")[-2].strip() == ""
+
+
+@pytest.mark.parametrize("name", ["ports", "parts"])
+def test_what_one_port_cannot_play_is_refused(name: str) -> None:
+    with pytest.raises(WishError, match=rf"midi\.{name}"):
+        programme_of(tuned("harbour-hymn.musicxml"), {name: "yes"})
