@@ -11,6 +11,7 @@ from typing import TYPE_CHECKING
 from retune.errors import OutputError
 from retune.harmony import analyse
 from retune.score.read import read, read_bytes
+from retune.score.transpose import moved
 from retune.tracks.learning import excerpt, learning_takes
 from retune.tracks.take import Take
 from retune.tuning import tune
@@ -45,7 +46,7 @@ def retuned(source: Path | bytes, name: str, reading: ReadOptions, policy: Polic
         score = read(source, reading)
     if policy.tonic is not None:
         # The user names it as it stands in the score.
-        policy = replace(policy, tonic=score.transposition.pitch_class(policy.tonic))
+        policy = replace(policy, tonic=moved(policy.tonic, score.transposition))
     return tune(score, analyse(score, policy.tonic), policy)
 
 

@@ -36,16 +36,16 @@ class Beyond:
 
 
 def beyond_range(score: Score) -> Iterator[Beyond]:
-    """Where sung parts leave their usual range, lowest first; nothing for unknown voices."""
+    """Where sung parts leave their usual range, below before above; nothing for unknown voices."""
+    notes: dict[int, list[Note]] = {part.index: [] for part in score.parts}
+    for note in score.notes:
+        notes[note.part].append(note)
     for part in score.parts:
-        if part.voice_type is None or not part.tuned:
+        if part.voice_type is None or not part.tuned or not notes[part.index]:
             continue
         low, high = RANGES[part.voice_type]
-        notes = [note for note in score.notes if note.part == part.index]
-        if not notes:
-            continue
-        lowest = min(notes, key=lambda note: note.pitch.key)
-        highest = max(notes, key=lambda note: note.pitch.key)
+        lowest = min(notes[part.index], key=lambda note: note.pitch.key)
+        highest = max(notes[part.index], key=lambda note: note.pitch.key)
         if lowest.pitch.key < low:
             yield Beyond(part, lowest, lowest.pitch.key - low)
         if highest.pitch.key > high:

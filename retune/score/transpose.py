@@ -2,11 +2,12 @@
 
 from __future__ import annotations
 
+from collections import defaultdict
 from collections.abc import Iterator
 from dataclasses import replace
 from fractions import Fraction
 
-from retune.errors import Finding, UnreadableError, Weight, WishError
+from retune.errors import Finding, Weight, WishError
 from retune.pitch import Pitch, PitchClass
 from retune.score.model import Bar, ChordSymbol, Note, Score, Transposition
 from retune.score.ranges import Beyond, beyond_range
@@ -14,6 +15,7 @@ from retune.score.ranges import Beyond, beyond_range
 FURTHEST = 24
 """Semitones; a choir that needs more sings another edition."""
 
+_LAST_KEY = 127
 _MOST_SIGNS = 7
 _MOST_ALTER = 2
 
@@ -21,12 +23,13 @@ _MOST_ALTER = 2
 def transposed(score: Score, semitones: int) -> Score:
     """A score moved by semitones, with a finding for each part that leaves its usual range.
 
+    All of it moves by one interval, `Score.transposition`, which adds up where a score is moved
+    again.
+
     Raises
     ------
     WishError
-        More than two octaves.
-    UnreadableError
-        A note would leave the keys of MIDI.
+        More than two octaves, or a note would leave the keys of MIDI.
     """
     if abs(semitones) > FURTHEST:
         raise WishError(
@@ -35,67 +38,104 @@ def transposed(score: Score, semitones: int) -> Score:
         )
     if not semitones:
         return score
+    _check_keys(score, semitones)
     by = _interval(score, semitones)
-    moved = replace(
+    pitches = {pitch: _pitch(pitch, by) for pitch in {note.pitch for note in score.notes}}
+    before = score.transposition
+    after = replace(
         score,
-        notes=tuple(_note(score, note, by) for note in score.notes),
+        notes=tuple(replace(note, pitch=pitches[note.pitch]) for note in score.notes),
         bars=tuple(_bar(bar, by) for bar in score.bars),
         chord_symbols=tuple(_symbol(one, by) for one in score.chord_symbols),
-        transposition=by,
+        transposition=Transposition(before.semitones + by.semitones, before.fifths + by.fifths),
     )
-    return replace(moved, findings=(*moved.findings, *_leaving(score, moved)))
+    return replace(after, findings=(*after.findings, *_leaving(score, after)))
+
+
+def moved(pitch: PitchClass, by: Transposition) -> PitchClass:
+    """A pitch class moved by an interval; where that needs three signs, its enharmonic twin.
+
+    >>> moved(PitchClass("C"), Transposition(1, -5)).name
+    'Db'
+    >>> moved(PitchClass("F", 2), Transposition(1, 7)).name
+    'G#'
+    """
+    there = by.pitch_class(pitch)
+    while abs(there.alter) > _MOST_ALTER:
+        there = PitchClass.from_fifths(there.fifths - (12 if there.alter > 0 else -12))
+    return there
+
+
+def _check_keys(score: Score, semitones: int) -> None:
+    """Raise `WishError` where the note furthest that way would leave the keys of MIDI."""
+    if not score.notes:
+        return
+    if semitones > 0:
+        furthest = max(score.notes, key=_key)
+        room, way = _LAST_KEY - _key(furthest), "up"
+    else:
+        furthest = min(score.notes, key=_key)
+        room, way = _key(furthest), "down"
+    if abs(semitones) > room:
+        raise WishError(
+            f"{furthest.pitch} moved {way} by {abs(semitones)} semitones leaves the keys of MIDI",
+            score.place(furthest.onset, furthest.part),
+            f"At most {room} semitone{'s' * (room != 1)} {way} is possible",
+        )
+
+
+def _key(note: Note) -> int:
+    return note.pitch.key
 
 
 def _interval(score: Score, semitones: int) -> Transposition:
-    """Of the spellings of an interval, the one with the fewest signs in the keys it leads to."""
-    lengths: dict[int, Fraction] = {}
-    for bar in score.bars:
-        lengths[bar.key[0]] = lengths.get(bar.key[0], Fraction(0)) + bar.duration
-    nearest = (7 * semitones + 6) % 12 - 6
-    spellings = [Transposition(semitones, nearest + turn) for turn in (0, -12, 12)]
+    """Of the spellings of an interval, the one with the fewest signs where it leads to.
 
-    def signs(by: Transposition) -> tuple[Fraction, int]:
-        used = sum((abs(key + by.fifths) * length for key, length in lengths.items()), Fraction(0))
-        # Of equal ones flats, which are more usual (D flat before C sharp).
-        return used, by.fifths
+    Signs are counted in the key signatures; in the notes where no signature has any, as in
+    MIDI files that give none.
+    """
+    if semitones % 12 == 0:
+        return Transposition(semitones, 0)
+    signed = any(bar.key[0] for bar in score.bars)
+    lengths: defaultdict[int, Fraction] = defaultdict(Fraction)
+    if signed:
+        for bar in score.bars:
+            lengths[bar.key[0]] += bar.duration
+    else:
+        for note in score.notes:
+            lengths[note.pitch.pitch_class.fifths] += note.duration
 
-    return min(spellings, key=signs)
-
-
-def _note(score: Score, note: Note, by: Transposition) -> Note:
-    pitch = note.pitch
-    spelled = _spelled(pitch.pitch_class, by)
-    key = pitch.key + by.semitones
-    if not 0 <= key <= 127:
-        raise UnreadableError(
-            f"{pitch} transposed by {by.semitones} semitones leaves the keys of MIDI",
-            score.place(note.onset, note.part),
-            "Transpose by less",
+    def signs(fifths: int) -> tuple[Fraction, int]:
+        used = sum(
+            (
+                length * abs(at + fifths if signed else PitchClass.from_fifths(at + fifths).alter)
+                for at, length in lengths.items()
+            ),
+            Fraction(0),
         )
-    return replace(note, pitch=Pitch.at_key(key, spelled))
+        # Of equal ones flats, which are more usual (common practice, no source).
+        return used, fifths
+
+    nearest = (7 * semitones + 6) % 12 - 6
+    other = nearest - 12 if nearest > 0 else nearest + 12
+    return Transposition(semitones, min((nearest, other), key=signs))
 
 
-def _spelled(pitch: PitchClass, by: Transposition) -> PitchClass:
-    """A pitch class moved; where that needs three signs, its enharmonic twin."""
-    fifths = pitch.fifths + by.fifths
-    while PitchClass.from_fifths(fifths).alter > _MOST_ALTER:
-        fifths -= 12
-    while PitchClass.from_fifths(fifths).alter < -_MOST_ALTER:
-        fifths += 12
-    return PitchClass.from_fifths(fifths)
+def _pitch(pitch: Pitch, by: Transposition) -> Pitch:
+    return Pitch.at_key(pitch.key + by.semitones, moved(pitch.pitch_class, by))
 
 
 def _bar(bar: Bar, by: Transposition) -> Bar:
     fifths, mode = bar.key
-    moved = fifths + by.fifths
-    if abs(moved) > _MOST_SIGNS:
-        moved -= 12 if moved > 0 else -12
-    return replace(bar, key=(moved, mode))
+    there = fifths + by.fifths
+    if abs(there) > _MOST_SIGNS:
+        there -= 12 if there > 0 else -12
+    return replace(bar, key=(there, mode))
 
 
 def _symbol(one: ChordSymbol, by: Transposition) -> ChordSymbol:
-    bass = None if one.bass is None else _spelled(one.bass, by)
-    return replace(one, root=_spelled(one.root, by), bass=bass)
+    bass = None if one.bass is None else moved(one.bass, by)
+    return replace(one, root=moved(one.root, by), bass=bass)
 
 
 def _leaving(before: Score, after: Score) -> Iterator[Finding]:
