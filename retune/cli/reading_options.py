@@ -16,6 +16,18 @@ from retune.score.transpose import FURTHEST
 _MEGABYTE = 1024 * 1024
 
 
+class SemitonesType(click.IntRange):
+    """Semitones up or down."""
+
+    def convert(self, value: Any, param: click.Parameter | None, ctx: click.Context | None) -> int:
+        """A whole number in range."""
+        try:
+            return int(super().convert(value, param, ctx))
+        except click.BadParameter:
+            allowed = f"a whole number of semitones from {self.min} to {self.max}"
+            self.fail(f"'{value}' is not {allowed}", param, ctx)
+
+
 class PaceType(click.ParamType[Any]):
     """A share of the score's tempo, or beats a minute."""
 
@@ -46,16 +58,16 @@ _READING = stacked(
     ),
     click.option(
         "--transpose",
-        type=click.IntRange(-FURTHEST, FURTHEST),
+        type=SemitonesType(-FURTHEST, FURTHEST),
         metavar="SEMITONES",
         default=0,
-        help="Move everything up, or down with -2.",
+        help="Move everything up, as 2, or down, as -2.",
     ),
     click.option(
         "--tempo",
         type=PaceType(),
         metavar="PERCENT%|BEATS",
-        help="80% of the score's tempo, or steadily 92 beats a minute.",
+        help="A share of the score's tempo, as 80%, or a steady one, as 92 beats a minute.",
     ),
     click.option(
         "--piece", type=click.IntRange(1), metavar="N", help="Which piece of a file with several."

@@ -18,6 +18,7 @@ from retune.score.lines import Line
 from retune.score.model import Bar, ChordSymbol, Part, Score
 from retune.score.options import ReadOptions
 from retune.score.order import Step, playing_order
+from retune.score.pace import Pace
 from retune.score.parts import cast_parts
 from retune.score.sounding import sounding_notes
 from retune.score.tempo import TempoMap
@@ -70,8 +71,7 @@ def _built(written: WrittenScore, stem: str, file: str | None, options: ReadOpti
     steps = playing_order(
         frames, _notes_in_bars(lines, frames), options.limits.max_notes, ledger, options.repeats
     )
-    fermatas = fermata_spans(written, frames) if options.fermatas else [()] * len(frames)
-    tempo = tempo_map(written, frames, steps, fermatas, ledger, options.tempo)
+    tempo = _tempo(written, frames, steps, ledger, options)
     bars = _bars(frames, steps)
     _check_time(bars, tempo, options.limits.max_seconds)
     notes = sounding_notes(written, frames, steps, lines, ledger)
@@ -91,6 +91,27 @@ def _built(written: WrittenScore, stem: str, file: str | None, options: ReadOpti
         left_out=casting.left_out,
         findings=(*_in_file(written, file), *ledger.findings([frame.number for frame in frames])),
     )
+
+
+def own_tempo(written: WrittenScore, options: ReadOptions) -> TempoMap:
+    """The tempo that a score gives itself, whatever pace is wished; for one that can be built."""
+    ledger = Ledger(None)
+    written = usable(written, ledger)
+    frames = align(written, ledger)
+    notes = [0] * len(frames)
+    steps = playing_order(frames, notes, options.limits.max_notes, ledger, options.repeats)
+    return _tempo(written, frames, steps, ledger, replace(options, tempo=Pace()))
+
+
+def _tempo(
+    written: WrittenScore,
+    frames: Sequence[Frame],
+    steps: Sequence[Step],
+    ledger: Ledger,
+    options: ReadOptions,
+) -> TempoMap:
+    fermatas = fermata_spans(written, frames) if options.fermatas else [()] * len(frames)
+    return tempo_map(written, frames, steps, fermatas, ledger, options.tempo)
 
 
 def _in_file(written: WrittenScore, file: str | None) -> Iterator[Finding]:

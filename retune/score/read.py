@@ -11,9 +11,10 @@ from dataclasses import dataclass, replace
 from pathlib import Path
 
 from retune.errors import LimitError, Place, RetuneError, UnreadableError, WishError
-from retune.score.build import build_score
+from retune.score.build import build_score, own_tempo
 from retune.score.model import Score
 from retune.score.options import ReadOptions
+from retune.score.pace import Pace
 from retune.score.transpose import transposed
 from retune.written import WrittenScore
 
@@ -39,7 +40,7 @@ def read(path: str | Path, options: ReadOptions | None = None) -> Score:
     LimitError
         It is larger, or plays longer, than the limits in `options` allow.
     WishError
-        A part or piece that `options` names is not in it.
+        A part or piece that `options` names is not in it, or it cannot be transposed so far.
     """
     options = options or ReadOptions()
     return read_bytes(_contents(Path(path), options), str(path), options)
@@ -60,7 +61,10 @@ def read_bytes(data: bytes, name: str, options: ReadOptions | None = None) -> Sc
     if written.format == "midi":
         from retune.score.midi.grouping import gathered
 
-        score = gathered(score, {part.id: part.pedals for part in written.parts})
+        # What was struck together is told by the clock it was played by, not by a wished tempo.
+        own = score.tempo if options.tempo == Pace() else own_tempo(written, options)
+        pedals = {part.id: part.pedals for part in written.parts}
+        score = replace(gathered(replace(score, tempo=own), pedals), tempo=score.tempo)
     return replace(transposed(score, options.transpose), source=data)
 
 
