@@ -25,6 +25,8 @@ from lxml import etree
 from retune.errors import Finding, LimitError, UnreadableError, Weight
 from retune.limits import Limits
 
+ARCHIVE = b"PK"
+"""What compressed MusicXML, as every zip archive, begins with."""
 CONTAINER = "META-INF/container.xml"
 _MAX_CONTAINER_BYTES = 1 << 20
 _MAX_MEMBERS = 10_000
@@ -43,7 +45,7 @@ _SIGNATURES = {
 }
 
 # Everything zipfile lets through on a damaged, encrypted or unknown archive.
-_ZIP_FAULTS = (
+ZIP_FAULTS = (
     zipfile.BadZipFile,
     zlib.error,
     lzma.LZMAError,
@@ -68,6 +70,7 @@ class Element(Protocol):
     def find(self, path: str) -> Element | None: ...
     def findtext(self, path: str) -> str | None: ...
     def findall(self, path: str) -> list[Element]: ...
+    def iterfind(self, path: str) -> Iterator[Element]: ...
     def iterchildren(self, tag: str) -> Iterator[Element]: ...
     def __iter__(self) -> Iterator[Element]: ...
 
@@ -87,8 +90,8 @@ def read_document(data: bytes, limits: Limits) -> Document:
     of its own, `LimitError` for more bytes than `limits.max_bytes`.
     """
     _check_size(len(data), limits)
-    if data.startswith(b"PK"):
-        inner, findings = _score_in_archive(data, limits)
+    if data.startswith(ARCHIVE):
+        _, inner, findings = score_in_archive(data, limits)
         document = _parse(inner)
         return Document(document.root, findings + document.findings)
     return _parse(data)
@@ -220,8 +223,11 @@ def _drop_namespaces(root: etree._Element) -> None:
 # --- compressed MusicXML -----------------------------------------------------------------
 
 
-def _score_in_archive(data: bytes, limits: Limits) -> tuple[bytes, tuple[Finding, ...]]:
-    """The bytes of the score in an .mxl archive: the first rootfile of its container."""
+def score_in_archive(data: bytes, limits: Limits) -> tuple[str, bytes, tuple[Finding, ...]]:
+    """Name and bytes of the score in an .mxl archive: the first rootfile of its container.
+
+    Raises as `read_document` does.
+    """
     if data.count(b"PK\1\2") > _MAX_MEMBERS:
         raise UnreadableError(
             f"the archive holds more than {_MAX_MEMBERS} files", hint=_EXPORT_AGAIN
@@ -229,8 +235,8 @@ def _score_in_archive(data: bytes, limits: Limits) -> tuple[bytes, tuple[Finding
     try:
         with zipfile.ZipFile(BytesIO(data)) as archive:
             name, findings = _score_name(archive)
-            return _member(archive, name, limits.max_bytes), findings
-    except _ZIP_FAULTS as fault:
+            return name, _member(archive, name, limits.max_bytes), findings
+    except ZIP_FAULTS as fault:
         raise UnreadableError(
             f"the archive cannot be unpacked: {_reason(fault)}",
             hint=f"It may be damaged or encrypted. {_EXPORT_AGAIN}",

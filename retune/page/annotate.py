@@ -79,7 +79,7 @@ def annotated(
         name: [(as_node(bar.frame), as_node(bar.body)) for bar in source.bars]
         for name, source in parts.items()
     }
-    lengths = _lengths([body for _, body in bars] for bars in music.values())
+    lengths = written_lengths([body for _, body in bars] for bars in music.values())
     by_element = {id(element): source for source, element in named}
     heads = heads_of(tuned, {by_element[key]: length for key, length in lengths.items()})
 
@@ -108,7 +108,7 @@ def _plain(element: Node) -> None:
         del element.attrib[name]
 
 
-def _lengths(parts: Iterable[list[Node]]) -> dict[int, Fraction]:
+def written_lengths(parts: Iterable[list[Node]]) -> dict[int, Fraction]:
     """Written lengths of note elements in quarter notes, by the elements' identity."""
     found: dict[int, Fraction] = {}
     for bars in parts:
@@ -145,7 +145,7 @@ def _write_cents(
     for source, head in heads.items():
         element = named.get(source)
         if element is not None and head.cents:
-            stacks.setdefault(id(_first_of_chord(element)), []).append((element, head))
+            stacks.setdefault(id(first_of_chord(element)), []).append((element, head))
     for stack in stacks.values():
         stack.sort(key=lambda entry: -_height(entry[0]))
     for bars in music.values():
@@ -179,7 +179,7 @@ def _verse(number: int, text: str) -> Node:
     return verse
 
 
-def _first_of_chord(element: Node) -> Node:
+def first_of_chord(element: Node) -> Node:
     """The note that a notehead shares its stem with and that bears the verses."""
     while element.find("chord") is not None:
         before = next(element.itersiblings("note", preceding=True), None)

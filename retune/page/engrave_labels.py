@@ -8,7 +8,7 @@ Conventions
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from fractions import Fraction
 
@@ -65,52 +65,74 @@ def heads_of(tuned: TunedScore, lengths: Mapping[str, Fraction]) -> dict[str, He
     """
     heads: dict[str, Head] = {}
     for note in tuned.notes:
-        sources = note.note.sources
-        values = list(_values(tuned, note))
-        for source, start, end in _spans(note, lengths):
-            if source in heads:
-                continue
-            here = [
-                cents
-                for segment, cents in values
-                if segment.onset < end and segment.end > start and cents is not None
-            ]
-            if source != sources[0] and here and _held_over(values, start):
-                here = here[1:]
-            heads[source] = Head(note.note.part, start, _without_repeats(here))
+        values = label_values(tuned, note)
+        for span in spans(note, lengths):
+            if span.source not in heads:
+                heads[span.source] = Head(
+                    note.note.part, span.start, label_cents(note, values, span)
+                )
     return heads
 
 
-def _values(tuned: TunedScore, note: TunedNote) -> Iterator[tuple[Segment, int | None]]:
-    """The segments of a note with their cents; None where none are to be written."""
+@dataclass(frozen=True, slots=True)
+class Span:
+    """A notehead of a note, and the time it stands for as played."""
+
+    source: str
+    start: Fraction
+    end: Fraction
+
+
+Values = Sequence[tuple[Segment, int | None]]
+"""The segments of a note with their cents as labels say them; None where they say none."""
+
+
+def label_values(tuned: TunedScore, note: TunedNote, equal: bool = False) -> Values:
+    """What labels say of each segment of a note.
+
+    Grace notes, parts that are not tuned and short chords bear none. Cents are relative to the
+    root, where the chord has ratios; with `equal` to equal temperament, lone lines too.
+    """
     sung = tuned.score.parts[note.note.part].tuned and not note.note.grace
+    found: list[tuple[Segment, int | None]] = []
     for segment in note.segments:
         chord = tuned.harmony.chords[segment.chord]
         root = tuned.root_cents[segment.chord]
         long = tuned.seconds(chord.end) - tuned.seconds(chord.onset) >= SHORTEST_CHORD
-        shown = sung and long and root is not None and segment.ratio is not None
-        yield segment, round(segment.cents - root) if shown and root is not None else None
+        said: int | None = None
+        if sung and long and equal:
+            said = round(segment.cents)
+        elif sung and long and root is not None and segment.ratio is not None:
+            said = round(segment.cents - root)
+        found.append((segment, said))
+    return found
 
 
-def _spans(
-    note: TunedNote, lengths: Mapping[str, Fraction]
-) -> Iterator[tuple[str, Fraction, Fraction]]:
-    """The noteheads of a note with the time each stands for."""
+def label_cents(note: TunedNote, values: Values, span: Span) -> tuple[int, ...]:
+    """The cents to write at a notehead: what sounds on from the one before is written there."""
+    here = [
+        cents
+        for segment, cents in values
+        if segment.onset < span.end and segment.end > span.start and cents is not None
+    ]
+    if span.source != note.note.sources[0] and here and _held_over(values, span.start):
+        here = here[1:]
+    return tuple(v for i, v in enumerate(here) if i == 0 or v != here[i - 1])
+
+
+def spans(note: TunedNote, lengths: Mapping[str, Fraction]) -> Iterator[Span]:
+    """The noteheads of a note with the time each stands for; `lengths` as in `heads_of`."""
     sources, start, end = note.note.sources, note.note.onset, note.note.end
     known = [lengths.get(source, Fraction(0)) for source in sources]
     if len(sources) > 1 and sum(known) == note.note.duration + note.note.stolen and all(known):
         for source, length in zip(sources, known, strict=True):
-            yield source, start, min(start + length, end)
+            yield Span(source, start, min(start + length, end))
             start += length
     else:
         for index, source in enumerate(sources):
-            yield source, start, end if index == 0 else start
+            yield Span(source, start, end if index == 0 else start)
 
 
-def _held_over(values: list[tuple[Segment, int | None]], start: Fraction) -> bool:
+def _held_over(values: Values, start: Fraction) -> bool:
     """Whether what sounds at a tied notehead began before it and is written there."""
     return any(s.onset < start < s.end and cents is not None for s, cents in values)
-
-
-def _without_repeats(values: list[int]) -> tuple[int, ...]:
-    return tuple(v for i, v in enumerate(values) if i == 0 or v != values[i - 1])

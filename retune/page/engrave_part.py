@@ -23,7 +23,11 @@ def keep_only(
         if word and source in named:
             _give_word(named[source], word)
     staff = str(wanted.staff)
-    for _, body in music.get(wanted.source, []):
+    played = {bar.written for bar in tuned.score.bars}
+    for index, (_, body) in enumerate(music.get(wanted.source, [])):
+        if index not in played:
+            # Of a bar outside an excerpt nothing is known: all of the staff stays.
+            own |= {id(e) for e in body.iterchildren("note") if _text(e, "staff") == staff}
         voices = {_text(e, "voice") for e in body.iterchildren("note") if id(e) in own}
         voices = voices or {_first_voice(body, staff)}
         for child in list(body):
@@ -68,14 +72,25 @@ def _make_silent(note: Node, body: Node) -> None:
         if follower is not None and follower.find("chord") is not None:
             # What is left of the chord takes the time instead.
             follower.set("heads-chord", "yes")
-            for child in note.findall("lyric") + note.findall("beam"):
+            for child in note.findall("lyric"):
                 follower.append(child)
+            for child in note.findall("beam"):
+                _put_beam(follower, child)
     else:
         follower = note.getnext()
         led = follower is not None and follower.find("chord") is not None
         if led and follower is not None and note.get("heads-chord", ""):
             follower.set("heads-chord", "yes")
         body.remove(note)
+
+
+def _put_beam(note: Node, beam: Node) -> None:
+    """Give a note a beam at the place that the schema gives it."""
+    for child in note:
+        if child.tag in ("notations", "lyric", "play", "listen"):
+            child.addprevious(beam)
+            return
+    note.append(beam)
 
 
 def _join_chords(body: Node) -> None:
