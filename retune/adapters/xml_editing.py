@@ -10,6 +10,7 @@ from __future__ import annotations
 import codecs
 import re
 from collections.abc import Iterator, Sequence
+from copy import deepcopy
 from dataclasses import dataclass
 from typing import cast
 from xml.parsers import expat
@@ -279,3 +280,8 @@ def elements_in(parent: Node) -> Iterator[Node]:
 def as_element(node: Node) -> Element:
     """A node as what only reads takes it."""
     return cast(Element, node)
+
+
+def copy_of(node: Node) -> Node:
+    """A copy of an element with all that is in it and the blanks after it."""
+    return deepcopy(node)

@@ -14,6 +14,7 @@ from retune.adapters.xml_editing import (
     whole_text,
     whole_tree,
 )
+from retune.export.notation_shared import add_shared, shared_directions
 from retune.limits import Limits
 from retune.page.engrave_part import keep_only
 from retune.score.model import Part
@@ -30,7 +31,8 @@ def part_document(
 ) -> tuple[EditedDocument, Mapping[str, Element]]:
     """The document of one part alone, and its note elements by `Note.sources`.
 
-    Line and page breaks of the whole score go; a part that shares its staff gets its own name.
+    Line and page breaks of the whole score go, tempo and rehearsal marks that stand at another
+    staff come; a part that shares its staff gets its own name.
     """
     root = whole_tree(whole.utf8)
     tree = as_element(root)
@@ -41,8 +43,12 @@ def part_document(
         for one in layout
     }
     shared = sum(other.source == part.source for other in tuned.score.parts) > 1
+    for_all = shared_directions(layout)
     if shared:
         keep_only(tuned, part.index, music, named)
+    for one in layout:
+        if one.heading.id == part.source:
+            add_shared(one, 1 if shared else part.staff, for_all)
     bodies = {id(body) for _, body in music.get(part.source, ())}
     for element in list(root.iter("part")):
         if id(element) not in bodies and not any(id(bar) in bodies for bar in element):

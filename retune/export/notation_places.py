@@ -30,13 +30,13 @@ class BarPlaces:
             return None
         latest = max(start for start, _ in before)
         note = next(element for start, element in before if start == latest)
-        return note, _offset((onset - latest) * self.divisions)
+        return note, offset_text((onset - latest) * self.divisions)
 
 
-def _offset(divisions: Fraction) -> str:
-    """A length in divisions as xs:decimal.
+def offset_text(divisions: Fraction) -> str:
+    """A length in divisions as xs:decimal; empty for none.
 
-    >>> _offset(Fraction(0)), _offset(Fraction(3)), _offset(Fraction(1, 3))
+    >>> offset_text(Fraction(0)), offset_text(Fraction(3)), offset_text(Fraction(1, 3))
     ('', '3', '0.333333')
     """
     if divisions == 0:
@@ -46,27 +46,55 @@ def _offset(divisions: Fraction) -> str:
     return f"{float(divisions):.6f}".rstrip("0").rstrip(".")
 
 
-def places_of(part: PartSource, staff: int) -> Iterator[BarPlaces]:
-    """The places of every bar of a part."""
+@dataclass(frozen=True, slots=True)
+class BarMoments:
+    """What is in a bar, each with its onset in quarter notes; a chord's notes share one."""
+
+    divisions: Fraction
+    children: tuple[tuple[Fraction, Element], ...]
+
+
+def moments(part: PartSource) -> Iterator[BarMoments]:
+    """The contents of every bar of a part."""
     divisions = Fraction(1)
     for bar in part.bars:
-        now = start = _ZERO
-        notes: list[tuple[Fraction, Element]] = []
+        now = chord = _ZERO
+        children: list[tuple[Fraction, Element]] = []
         for child in bar.body:
-            length = (decimal(child.findtext("duration")) or _ZERO) / divisions
-            if child.tag == "attributes":
+            tag = child.tag
+            if tag == "attributes":
                 divisions = _positive(child.findtext("divisions")) or divisions
-            elif child.tag == "backup":
-                now = max(now - length, _ZERO)
-            elif child.tag == "forward":
+            elif tag in ("backup", "forward", "note"):
+                length = (decimal(child.findtext("duration")) or _ZERO) / divisions
+                if tag == "note" and child.find("chord") is not None:
+                    children.append((chord, child))
+                    continue
+                if tag == "backup":
+                    now = max(now - length, _ZERO)
+                    continue
+                children.append((now, child))
+                chord = now
                 now += length
-            elif child.tag == "note" and child.find("chord") is None:
-                start = now
-                here = (child.findtext("staff") or "1").strip() == str(staff)
-                if here and child.find("grace") is None:
-                    notes.append((start, child))
-                now += length
-        yield BarPlaces(divisions, tuple(notes))
+                continue
+            offset = decimal(child.findtext("offset")) if tag == "direction" else None
+            children.append((max(now + (offset or _ZERO) / divisions, _ZERO), child))
+        yield BarMoments(divisions, tuple(children))
+
+
+def places_of(part: PartSource, staff: int) -> Iterator[BarPlaces]:
+    """The places of every bar of a part: its notes and rests on a staff, but for grace notes."""
+    for bar in moments(part):
+        yield BarPlaces(
+            bar.divisions,
+            tuple(
+                (onset, child)
+                for onset, child in bar.children
+                if child.tag == "note"
+                and child.find("chord") is None
+                and child.find("grace") is None
+                and (child.findtext("staff") or "1").strip() == str(staff)
+            ),
+        )
 
 
 def _positive(text: str | None) -> Fraction | None:
