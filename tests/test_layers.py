@@ -43,6 +43,7 @@ DOORS = {
     "pyloudnorm": {"adapters"},
     "fluidsynth": {"adapters"},
     "verovio": {"adapters"},
+    "typst": {"adapters"},
     "watchfiles": {"adapters"},
 }
 

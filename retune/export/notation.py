@@ -12,13 +12,12 @@ from collections.abc import Iterator, Sequence
 from contextlib import contextmanager
 from dataclasses import dataclass, field, replace
 from enum import StrEnum
-from functools import partial
 from typing import ClassVar
 
 from retune.adapters.mxl import is_compressed, packed, repacked, unpacked
 from retune.adapters.xml_editing import EditedDocument
 from retune.errors import OutputError, Place, RetuneError
-from retune.export.base import LateFile, Output, OutputFile
+from retune.export.base import OutputFile
 from retune.export.names import safe_name
 from retune.export.notation_edit import Additions, Edited, with_additions
 from retune.export.notation_heads import Cents
@@ -101,7 +100,7 @@ class NotationExporter:
     suffixes: ClassVar[tuple[str, ...]] = (".musicxml", ".mxl")
     Options: ClassVar[type[NotationOptions]] = NotationOptions
 
-    def export(self, takes: Sequence[Take], options: NotationOptions) -> Iterator[Output]:
+    def export(self, takes: Sequence[Take], options: NotationOptions) -> Iterator[OutputFile]:
         """Yield the full score, then the parts.
 
         Raises
@@ -119,9 +118,9 @@ class NotationExporter:
         yield OutputFile(f"{FOLDER}/Full score - {stem}.{ending}", *source.full())
         for title, part in wanted_parts(takes, options.parts):
             name = safe_name(title)
-            yield LateFile(
-                f"{FOLDER}/{name}/{name} - {stem}.{ending}", partial(source.part_file, part.index)
-            )
+            # Made at once: they are quick, and one that fails must not take other outputs along.
+            data = source.part_file(part.index)
+            yield OutputFile(f"{FOLDER}/{name}/{name} - {stem}.{ending}", data)
 
 
 def wanted_parts(takes: Sequence[Take], wish: Parts) -> Iterator[tuple[str, Part]]:

@@ -30,11 +30,11 @@ from retune.export.notation_marks import (
     identity,
     is_added_sign,
 )
-from retune.export.notation_places import BarPlaces, places_of
 from retune.export.notation_signs import arrow_glyph, commas_of, septimal_glyph
 from retune.harmony.symbols import doubtable_symbol, printed
 from retune.page.annotate import first_of_chord, written_lengths
 from retune.page.engrave_chords import appearances
+from retune.page.engrave_moments import BarPlaces, places_of
 from retune.pitch import PitchClass
 from retune.score.model import Part
 from retune.score.musicxml.layout import read_layout

@@ -14,7 +14,7 @@ from fractions import Fraction
 from retune.adapters.notation_writing import write_musicxml
 from retune.errors import OutputError
 from retune.limits import Limits
-from retune.score.model import Note, Part, Score, VoiceType
+from retune.score.model import Note, Part, Score, Transposition, VoiceType
 from retune.score.musicxml import read_musicxml
 from retune.tuning.model import TunedScore
 from retune.written import (
@@ -75,6 +75,7 @@ def as_musicxml(tuned: TunedScore) -> TunedScore:
         notes=tuple(one.note for one in notes),
         format="musicxml",
         source=source,
+        transposition=Transposition(),
     )
     return replace(tuned, score=made, notes=notes)
 

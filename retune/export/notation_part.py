@@ -14,9 +14,9 @@ from retune.adapters.xml_editing import (
     whole_text,
     whole_tree,
 )
-from retune.export.notation_shared import add_shared, shared_directions
 from retune.limits import Limits
 from retune.page.engrave_part import keep_only
+from retune.page.engrave_shared import add_shared, shared_directions
 from retune.score.model import Part
 from retune.score.musicxml import noteheads
 from retune.score.musicxml.layout import read_layout

@@ -15,6 +15,7 @@ from retune.adapters.engraving_markup import Node, as_node, node, own_copy, seri
 from retune.limits import Limits
 from retune.page.engrave_labels import Head, heads_of
 from retune.page.engrave_part import Bars, keep_only
+from retune.page.engrave_shared import add_shared, shared_directions
 from retune.score.model import Part
 from retune.score.musicxml import noteheads
 from retune.score.musicxml.layout import read_layout
@@ -74,7 +75,8 @@ def annotated(
     read, root = own_copy(document, Limits())
     named = [(source, as_node(element)) for source, element in noteheads(read)]
     ids = {source: f"n{index}" for index, (source, _) in enumerate(named)}
-    parts = {source.heading.id: source for source in read_layout(read, Log())}
+    layout = read_layout(read, Log())
+    parts = {source.heading.id: source for source in layout}
     music = {
         name: [(as_node(bar.frame), as_node(bar.body)) for bar in source.bars]
         for name, source in parts.items()
@@ -88,7 +90,11 @@ def annotated(
     for source, element in named:
         element.set("id", ids[source])
     if part is not None:
+        for_all = shared_directions(layout)
         keep_only(tuned, part, music, dict(named))
+        own = parts.get(tuned.score.parts[part].source)
+        if own is not None:
+            add_shared(own, 1, for_all)
     _write_cents(heads, dict(named), music)
     kept = [tuned.score.parts[part]] if part is not None else tuned.score.parts
     _keep_parts(root, music, {one.source for one in kept}, part is not None)

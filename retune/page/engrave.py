@@ -44,18 +44,22 @@ _STAFF_SPACES = ((360, 5.9), (1000, 6.6), (1700, 10.4))
 _ALONE = 1.25
 """How much larger a part by itself is."""
 
-_TEXT_FONT = "Times, 'Times New Roman', 'Liberation Serif', 'Nimbus Roman', serif"
-_CHORD_FONT = "Arial, Helvetica, 'Liberation Sans', sans-serif"
+TEXT_FONT = "Times, 'Times New Roman', 'Liberation Serif', 'Nimbus Roman', serif"
+CHORD_FONT = "Arial, Helvetica, 'Liberation Sans', sans-serif"
 _MARGIN = 60
 _CHORDS_BELOW = 150
 
 
 @dataclass(frozen=True, slots=True)
 class Wish:
-    """A picture wanted: for a screen of `width` CSS pixels, of all parts or of one."""
+    """A picture wanted: for a screen of `width` CSS pixels, of all parts or of one.
+
+    `space` is the height of a staff space in pixels; 0 for one that suits the width.
+    """
 
     width: int
     part: int | None = None
+    space: float = 0
 
 
 @dataclass(frozen=True, slots=True)
@@ -165,6 +169,8 @@ def _units(wish: Wish) -> int:
 
 def staff_space(wish: Wish) -> float:
     """Height of a staff space in CSS pixels, in proportion between the widths looked at."""
+    if wish.space:
+        return wish.space
     points = list(_STAFF_SPACES)
     (x0, y0), (x1, y1) = points[:2] if wish.width <= points[1][0] else points[1:]
     width = min(max(wish.width, points[0][0]), points[-1][0])
@@ -178,10 +184,10 @@ def _picture(tuned: TunedScore, drawing: SystemDrawing, line: list[str], bottom:
     numbers = {bar.written: bar.number for bar in reversed(tuned.score.bars)}
     shown = [numbers[bar] for bar in sorted(drawing.bars) if bar in numbers]
     label = f"Bars {shown[0]} to {shown[-1]}" if shown else "Score"
-    chords = f'<g class="chords" font-family="{_CHORD_FONT}">{"".join(line)}</g>' if line else ""
+    chords = f'<g class="chords" font-family="{CHORD_FONT}">{"".join(line)}</g>' if line else ""
     return (
         '<svg xmlns="http://www.w3.org/2000/svg" class="engraving"'
         f' viewBox="-{_MARGIN} {top} {drawing.width + 2 * _MARGIN} {height}" role="group"'
-        f' aria-label="{escape(label)}" fill="currentColor" font-family="{_TEXT_FONT}">'
+        f' aria-label="{escape(label)}" fill="currentColor" font-family="{TEXT_FONT}">'
         f"{''.join(drawing.markup)}{chords}</svg>"
     )

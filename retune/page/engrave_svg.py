@@ -25,7 +25,9 @@ from retune.page.engrave_text import Style, drawn_text, runs_of, style_of, use
 CENTS_SIZE = 320
 HEAD_WIDTH = 226
 
-_DROPPED = re.compile(r"placeholder|bounding-box|Milestone\b|milestoneEnd", re.I)
+_DROPPED = re.compile(
+    r"placeholder|bounding-box|pageMilestone|MilestoneEnd|(?<!ending )systemMilestone", re.I
+)
 _LINE = re.compile(r"M(-?\d+) (-?\d+) L(-?\d+) (-?\d+)$")
 _USE = re.compile(r"translate\((-?\d+), (-?\d+)\) scale\((-?[\d.]+), (-?[\d.]+)\)")
 _NUMBER = re.compile(r"-?\d+(?:\.\d+)?")

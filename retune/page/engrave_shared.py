@@ -12,7 +12,7 @@ from fractions import Fraction
 from retune.adapters.engraving_markup import Node, as_node, node
 from retune.adapters.xml import Element
 from retune.adapters.xml_editing import copy_of
-from retune.export.notation_places import BarPlaces, moments, offset_text, places_of
+from retune.page.engrave_moments import BarPlaces, moments, offset_text, places_of
 from retune.score.musicxml.jumps import jump_in_words
 from retune.score.musicxml.layout import PartSource
 from retune.score.musicxml.values import words
