@@ -151,12 +151,13 @@ class _Source:
             )
             self.ending = "mxl" if compressed else "musicxml"
             whole = unpacked(self._file, self._limits)
-            self._plain, self._labels_left = without_additions(whole, self._limits)
+            plain, self._labels_left = without_additions(whole, self._limits)
+            self._document = EditedDocument(plain, self._limits)
 
     def full(self) -> tuple[bytes, str]:
         """The whole score, and what to tell of it."""
         with self._guarded():
-            document = EditedDocument(self._plain, self._limits)
+            document = self._document
             named = dict(noteheads(document.root))
             bars = max(len(one.bars) for one in read_layout(document.root, Log()))
             edited = with_additions(self._tuned, document, named, self._wish)
@@ -172,8 +173,7 @@ class _Source:
         """One part's own line."""
         part = self._tuned.score.parts[index]
         with self._guarded():
-            whole = EditedDocument(self._plain, self._limits)
-            alone, named = part_document(self._tuned, whole, part, self._limits)
+            alone, named = part_document(self._tuned, self._document.utf8, part, self._limits)
             edited = with_additions(self._tuned, alone, named, self._wish, part)
             return self._packed(edited.data)
 

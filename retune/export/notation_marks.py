@@ -62,6 +62,8 @@ def without_additions(data: bytes, limits: Limits) -> tuple[bytes, bool]:
     data : bytes
         MusicXML, not compressed.
     """
+    if not any(FIELD.encode(form) in data for form in ("utf-8", "utf-16-le", "utf-16-be")):
+        return data, False
     document = EditedDocument(data, limits)
     fields = [
         field
@@ -81,14 +83,23 @@ def without_additions(data: bytes, limits: Limits) -> tuple[bytes, bool]:
                 removed |= {id(one): one for one in play.findall("other-play") if _is_cents(one)}
         if any(COMMA_SIGNS in (field.text or "") for field in fields):
             removed |= _without_arrows(document)
-    for field in fields:
-        parent = document.root.find("identification/miscellaneous")
-        alone = parent is not None and len(parent.findall("miscellaneous-field")) == len(fields)
-        target = parent if alone and parent is not None else field
-        removed[id(target)] = target
+    if fields:
+        box = _box(document.root, fields)
+        removed |= {id(one): one for one in box}
     for element in removed.values():
         document.remove(element)
     return document.result(), bool(fields) and not labels
+
+
+def _box(root: Element, fields: list[Element]) -> list[Element]:
+    """The fields, or what holds nothing else."""
+    miscellaneous = root.find("identification/miscellaneous")
+    identification = root.find("identification")
+    assert miscellaneous is not None, "it holds the fields"
+    assert identification is not None, "it holds the fields"
+    if len(list(miscellaneous)) > len(fields):
+        return fields
+    return [miscellaneous if len(list(identification)) > 1 else identification]
 
 
 def _is_cents(play: Element) -> bool:

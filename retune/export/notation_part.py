@@ -27,14 +27,15 @@ _BREAKS = ("new-system", "new-page", "page-number", "blank-page", "staff-spacing
 
 
 def part_document(
-    tuned: TunedScore, whole: EditedDocument, part: Part, limits: Limits
+    tuned: TunedScore, utf8: bytes, part: Part, limits: Limits
 ) -> tuple[EditedDocument, Mapping[str, Element]]:
     """The document of one part alone, and its note elements by `Note.sources`.
 
     Line and page breaks of the whole score go, tempo and rehearsal marks that stand at another
-    staff come; a part that shares its staff gets its own name.
+    staff come; a part that shares its staff gets its own name. `utf8` is that of the whole
+    `EditedDocument`.
     """
-    root = whole_tree(whole.utf8)
+    root = whole_tree(utf8)
     tree = as_element(root)
     layout = read_layout(tree, Log())
     named = {source: as_node(note) for source, note in noteheads(tree)}

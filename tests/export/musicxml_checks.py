@@ -11,7 +11,8 @@ import json
 import re
 import zipfile
 from collections import defaultdict
-from collections.abc import Iterator
+from collections.abc import Iterator, Sequence
+from dataclasses import dataclass
 from fractions import Fraction
 from functools import cache
 from io import BytesIO
@@ -143,3 +144,61 @@ def by_part(root: etree._Element) -> Iterator[tuple[str, list[etree._Element]]]:
             name,
             [p for p in root.iterfind("measure/part") if p.get("id", "") == name],
         )
+
+
+_SEMITONES = {"C": 0, "D": 2, "E": 4, "F": 5, "G": 7, "A": 9, "B": 11}
+Events = dict[tuple[str, int], list[tuple[Fraction, float, str]]]
+
+
+def events_of(root: etree._Element, starts: Sequence[Fraction]) -> Events:
+    """By part id and sounding MIDI key: from when, in quarter notes, which cents, in which voice.
+
+    Durations, voices and transposition are read as the MusicXML 4.0 reference describes them;
+    `starts` are the onsets of the bars.
+    """
+    found: Events = defaultdict(list)
+    for name, bars in by_part(root):
+        for start, bar in zip(starts, _with_state(bars), strict=True):
+            for onset, key, note in _walked(bar):
+                for after, cents in cents_of(note).get(1, ()):
+                    voice = note.findtext("voice") or "1"
+                    found[name, key].append((start + onset + after, cents, voice))
+    return found
+
+
+@dataclass
+class _Bar:
+    element: etree._Element
+    divisions: Fraction
+    shift: int
+
+
+def _with_state(bars: list[etree._Element]) -> Iterator[_Bar]:
+    divisions, shift = Fraction(1), 0
+    for bar in bars:
+        for attributes in bar.findall("attributes"):
+            divisions = Fraction(attributes.findtext("divisions") or divisions)
+            transpose = attributes.find("transpose")
+            if transpose is not None:
+                octaves = int(transpose.findtext("octave-change") or 0)
+                shift = int(transpose.findtext("chromatic")) + 12 * octaves
+        yield _Bar(bar, divisions, shift)
+
+
+def _walked(bar: _Bar) -> Iterator[tuple[Fraction, int, etree._Element]]:
+    """Onset, key and element of each note of a bar."""
+    now = onset = Fraction(0)
+    for child in bar.element:
+        length = Fraction(child.findtext("duration") or 0) / bar.divisions
+        if child.tag == "backup":
+            now -= length
+        elif child.tag == "forward":
+            now += length
+        elif child.tag == "note":
+            if child.find("chord") is None:
+                onset, now = now, now + length
+            pitch = child.find("pitch")
+            if pitch is not None:
+                key = _SEMITONES[pitch.findtext("step")] + int(pitch.findtext("alter") or 0)
+                key += 12 * (int(pitch.findtext("octave")) + 1) + bar.shift
+                yield onset, key, child
