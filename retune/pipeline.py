@@ -31,7 +31,7 @@ Settings = Mapping[str, str]
 Progress = Callable[[int, int], None]
 """Told how many files are done, and of how many."""
 
-ALL_OUTPUTS = ("page", "audio", "midi", "scala", "notes")
+ALL_OUTPUTS = ("page", "audio", "midi", "notation", "scala", "notes")
 """What `make` writes."""
 
 TRACK_OUTPUTS = ("audio", "midi")

@@ -49,6 +49,14 @@ _KINDS = (
         ),
     ),
     (
+        "notation/",
+        (
+            "The score with its cents, as MusicXML for your notation program, and each part by "
+            "itself. Small numbers at the notes count from the root of the chord: select one, "
+            "then all like it, to move, hide or delete them."
+        ),
+    ),
+    (
         "tables/",
         (
             "Tuning tables (.scl with .kbm) for instruments and sequencers that load them. "
