@@ -62,7 +62,12 @@ def svgs_of(pages: Pages) -> tuple[bytes, ...]:
 
 
 def _set(pages: Pages, kind: Literal["pdf", "svg"]) -> tuple[bytes, ...]:
-    import typst
+    try:
+        import typst
+    except ImportError:
+        raise OutputError(
+            "the package typst, which sets pages, is not installed", hint="pip install typst"
+        ) from None
 
     names = [f"{index}.svg" for index in range(len(pages.pictures))]
     said = {

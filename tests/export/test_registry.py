@@ -151,7 +151,7 @@ def test_two_plug_ins_of_one_name_are_an_error_that_names_both() -> None:
 
 
 def test_an_unknown_output_lists_what_there_is() -> None:
-    words = r"'mdi'.*Did you mean midi\? Installed are audio, midi, mpe, mts, notes"
+    words = r"'mdi'.*Did you mean midi\? Installed are audio, midi, mpe, mts, notation, notes"
     with pytest.raises(WishError, match=words):
         find_exporters().get("mdi")
 
