@@ -13,6 +13,7 @@ from fractions import Fraction
 from typing import Any, cast
 
 from retune.adapters.music21_parsing import guarded
+from retune.errors import OutputError, UnreadableError
 from retune.pitch import Pitch
 from retune.written import MarkKind, WrittenBar, WrittenNote, WrittenPart, WrittenScore
 
@@ -25,12 +26,16 @@ _ALTERED = {-2: "--", -1: "-", 0: "", 1: "#", 2: "##"}
 def write_musicxml(score: WrittenScore) -> bytes:
     """The bytes of an uncompressed MusicXML file, the same each time.
 
-    Parts have the ids P1, P2 and so on. Raises `UnreadableError` where music21 cannot write it.
+    Parts have the ids P1, P2 and so on. Raises `OutputError` where music21 cannot write it.
     """
-    with guarded("MusicXML"):
-        m21 = _music21()
-        exporter = m21.musicxml.m21ToXml.GeneralObjectExporter(_stream(score))
-        made: bytes = exporter.parse()
+    try:
+        with guarded("MusicXML"):
+            m21 = _music21()
+            exporter = m21.musicxml.m21ToXml.GeneralObjectExporter(_stream(score))
+            made: bytes = exporter.parse()
+    except UnreadableError as fault:
+        reason = str(fault.__cause__ or fault).split("\n")[0][:200]
+        raise OutputError(f"it cannot be written as notation: {reason}") from fault
     return (_DATE if score.composer else _DATE_AND_COMPOSER).sub(b"", made)
 
 

@@ -239,8 +239,8 @@ _TAG = re.compile(rb"""<[^"'>]*(?:"[^"]*"[^"'>]*|'[^']*'[^"'>]*)*>""")
 def whole_tree(utf8: bytes) -> Node:
     """The root of an `EditedDocument.utf8` with what `read_document` leaves out.
 
-    Comments, processing instructions and blanks stay, so that `whole_text` gives them back. A
-    score in a namespace leaves it: MusicXML has none.
+    Comments, processing instructions and blanks stay, so that `whole_text` gives them back,
+    but for those inside a word or number. A score in a namespace leaves it: MusicXML has none.
     """
     parser = etree.XMLParser(
         encoding="utf-8",
@@ -258,6 +258,11 @@ def whole_tree(utf8: bytes) -> Node:
         for element in root.iter(f"{namespace}*"):
             element.tag = element.tag[len(namespace) :]
         etree.cleanup_namespaces(root)
+    for aside in list(root.iter(etree.Comment, etree.ProcessingInstruction)):
+        parent = aside.getparent()
+        # Inside a word or number it would cut its text in two.
+        if parent is not None and next(parent.iterchildren(etree.Element), None) is None:
+            etree.strip_tags(parent, etree.Comment, etree.ProcessingInstruction)
     return cast(Node, root)
 
 

@@ -156,7 +156,7 @@ class _Writer:
         for source, passes in heads.items():
             said = label_text(passes, self._wish.least)
             part = passes[0].part
-            if said:
+            if said and self._named[source].get("print-object") != "no":
                 first = as_element(first_of_chord(as_node(self._named[source])))
                 _, rows = stems.setdefault(id(first), (first, []))
                 rows.append((above[part], part, said))

@@ -6,6 +6,7 @@ where they are nearer. The tuned pitches stay those of the notes as they were pl
 
 from __future__ import annotations
 
+from bisect import bisect_left
 from collections import defaultdict
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, replace
@@ -87,16 +88,24 @@ def _placed(score: Score, part: int) -> Iterator[_Placed]:
     """The notes of a part on the grid; one that ended before the next began still does."""
     own = [(index, note) for index, note in enumerate(score.notes) if note.part == part]
     starts = sorted({note.analysed_onset for _, note in own if not note.grace})
-    last = score.bars[-1].end if score.bars else Fraction(0)
     for index, note in own:
         onset, end = note.analysed_onset, note.analysed_end
-        if score.format == "midi":
-            follower = next((s for s in starts if s >= end), None) if len(starts) < 5000 else None
+        if note.grace:
+            # It is written where the note begins that it leads to.
+            onset = end = _from(starts, note.end) or note.onset
+        elif score.format == "midi":
+            follower = _from(starts, end)
             onset, end = on_grid(onset), on_grid(end)
             if follower is not None:
                 end = min(end, max(on_grid(follower), onset + _SHORTEST))
             end = max(end, onset + _SHORTEST)
-        yield _Placed(note, index, min(onset, last), min(end, last))
+        yield _Placed(note, index, onset, end)
+
+
+def _from(starts: Sequence[Fraction], time: Fraction) -> Fraction | None:
+    """The first of ascending times that is not before another."""
+    at = bisect_left(starts, time)
+    return starts[at] if at < len(starts) else None
 
 
 def on_grid(time: Fraction) -> Fraction:

@@ -54,7 +54,8 @@ def part_document(
     for element in list(root.iter("part")):
         if id(element) not in bodies and not any(id(bar) in bodies for bar in element):
             _cut(element)
-    _keep_listed(root, part, shared)
+    own = next((element.get("id", "").strip() for element in root.iter("part")), "")
+    _keep_listed(root, own, part, shared)
     _without_breaks(root)
     order = {id(element): index for index, element in enumerate(elements_of(root))}
     alone = EditedDocument(whole_text(root), limits)
@@ -65,16 +66,24 @@ def part_document(
     }
 
 
-def _keep_listed(root: Node, part: Part, shared: bool) -> None:
-    """The part's own entry in the part list, without brackets and the other parts."""
+def _keep_listed(root: Node, own: str, part: Part, shared: bool) -> None:
+    """The part's own entry in the part list, without brackets and the other parts.
+
+    `own` is the id that its music bears. Where the list does not have it, as in damaged files,
+    one entry stays: the schema wants one.
+    """
     listed = root.find("part-list")
-    for entry in () if listed is None else list(elements_in(listed)):
-        if entry.tag == "score-part" and entry.get("id", "").strip() == part.source:
-            if shared:
-                _rename(entry, "part-name", part.name)
-                _rename(entry, "part-abbreviation", part.abbreviation or part.name)
-        else:
+    if listed is None:
+        return
+    entries = [entry for entry in elements_in(listed) if entry.tag == "score-part"]
+    kept = next((e for e in entries if e.get("id", "").strip() == own), None)
+    kept = kept if kept is not None or not entries else entries[0]
+    for entry in list(elements_in(listed)):
+        if entry is not kept:
             _cut(entry)
+        elif shared:
+            _rename(entry, "part-name", part.name)
+            _rename(entry, "part-abbreviation", part.abbreviation or part.name)
 
 
 def _rename(entry: Node, tag: str, name: str) -> None:

@@ -615,6 +615,8 @@ def test_damaged_but_readable_scores_are_edited_all_the_same() -> None:
         ODD.replace(b"<duration>16</duration>", b"<duration> 16 </duration><!-- x -->", 1),
         re.sub(rb"<part-list>.*</part-list>", b"", ODD),
         ODD.replace(b"</part>", b"<?x y?></part>"),
+        ODD.replace(b"<duration>16<", b"<duration><!-- x -->16<"),
+        ODD.replace(b'<score-part id="P1">', b"<score-part>"),
         ODD.replace(b"<voice>2</voice>", b"<voice> 2 &amp; \xc3\xa9</voice>"),
     ]
     for source in odd:

@@ -120,6 +120,18 @@ def test_the_cents_at_the_notes_are_those_that_were_tuned(data: bytes | None, na
             assert said[-1] == pytest.approx(cents, abs=1e-6)
 
 
+def test_grace_notes_are_written_before_the_note_they_lead_to() -> None:
+    graced = ABC.replace(b"F2 A | (3ABA", b"F2 {GE}A | (3{c}ABA")
+    tree = tree_of(full(of_bytes(graced, "a.abc")))
+    steps = [
+        (note.find("grace") is not None, note.findtext("pitch/step"))
+        for note in tree.find("part").iter("note")
+    ]
+    assert steps[:6] == [
+        (False, "F"), (True, "G"), (True, "E"), (False, "A"), (True, "C"), (False, "A"),
+    ]  # fmt: skip
+
+
 def test_what_was_played_in_is_written_to_common_values() -> None:
     # Notes 91/96 of a quarter long, and a little late each: quarters are meant.
     events = []
