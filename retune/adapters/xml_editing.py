@@ -9,7 +9,7 @@ from __future__ import annotations
 
 import codecs
 import re
-from collections.abc import Iterator, Sequence
+from collections.abc import Iterable, Iterator, Sequence
 from copy import deepcopy
 from dataclasses import dataclass
 from typing import cast
@@ -136,6 +136,15 @@ class EditedDocument:
         found = re.search(rb"\s+" + name.encode() + rb"""\s*=\s*("[^"]*"|'[^']*')""", tag)
         if found:
             self._removed.append((span.start + found.start(), span.start + found.end()))
+
+    def utf8_without(self, elements: Iterable[Element]) -> bytes:
+        """The text in UTF-8 as it was given, but for some elements, none within another."""
+        pieces: list[bytes] = []
+        done = 0
+        for span in sorted(map(self._span, elements), key=lambda one: one.start):
+            pieces.append(self.utf8[done : span.start])
+            done = span.end
+        return b"".join([*pieces, self.utf8[done:]])
 
     def result(self) -> bytes:
         """The document with all changes, in its own encoding."""

@@ -23,7 +23,7 @@ from retune.export.notation_edit import Additions, Edited, with_additions
 from retune.export.notation_heads import Cents
 from retune.export.notation_made import as_musicxml
 from retune.export.notation_marks import without_additions
-from retune.export.notation_part import part_document
+from retune.export.notation_part import PartCutter
 from retune.export.options import require_allowed
 from retune.limits import Limits
 from retune.score.model import Part
@@ -153,14 +153,15 @@ class _Source:
             whole = unpacked(self._file, self._limits)
             plain, self._labels_left = without_additions(whole, self._limits)
             self._document = EditedDocument(plain, self._limits)
+            self._named = dict(noteheads(self._document.root))
+            self._cutter: PartCutter | None = None
 
     def full(self) -> tuple[bytes, str]:
         """The whole score, and what to tell of it."""
         with self._guarded():
             document = self._document
-            named = dict(noteheads(document.root))
             bars = max(len(one.bars) for one in read_layout(document.root, Log()))
-            edited = with_additions(self._tuned, document, named, self._wish)
+            edited = with_additions(self._tuned, document, self._named, self._wish)
             packed_there = is_compressed(self._file) and self.ending == "mxl"
             data = (
                 repacked(self._file, edited.data, self._limits)
@@ -173,7 +174,9 @@ class _Source:
         """One part's own line."""
         part = self._tuned.score.parts[index]
         with self._guarded():
-            alone, named = part_document(self._tuned, self._document.utf8, part, self._limits)
+            if self._cutter is None:
+                self._cutter = PartCutter(self._tuned, self._document, self._named, self._limits)
+            alone, named = self._cutter.alone(part)
             edited = with_additions(self._tuned, alone, named, self._wish, part)
             return self._packed(edited.data)
 

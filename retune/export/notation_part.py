@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Iterator, Mapping
 
 from retune.adapters.engraving_markup import Node, as_node
 from retune.adapters.xml import Element
@@ -18,52 +18,76 @@ from retune.limits import Limits
 from retune.page.engrave_part import keep_only
 from retune.page.engrave_shared import add_shared, shared_directions
 from retune.score.model import Part
-from retune.score.musicxml import noteheads
-from retune.score.musicxml.layout import read_layout
+from retune.score.musicxml.layout import PartSource, read_layout
 from retune.score.musicxml.log import Log
 from retune.tuning.model import TunedScore
 
 _BREAKS = ("new-system", "new-page", "page-number", "blank-page", "staff-spacing")
 
 
-def part_document(
-    tuned: TunedScore, utf8: bytes, part: Part, limits: Limits
-) -> tuple[EditedDocument, Mapping[str, Element]]:
-    """The document of one part alone, and its note elements by `Note.sources`.
+class PartCutter:
+    """Cuts single parts out of a score.
 
-    Line and page breaks of the whole score go, tempo and rehearsal marks that stand at another
-    staff come; a part that shares its staff gets its own name. `utf8` is that of the whole
-    `EditedDocument`.
+    Parameters
+    ----------
+    whole : EditedDocument
+        The score; it stays as it is.
+    named : mapping
+        Its note elements by `Note.sources`.
     """
-    root = whole_tree(utf8)
-    tree = as_element(root)
-    layout = read_layout(tree, Log())
-    named = {source: as_node(note) for source, note in noteheads(tree)}
-    music = {
-        one.heading.id: [(as_node(bar.frame), as_node(bar.body)) for bar in one.bars]
-        for one in layout
-    }
-    shared = sum(other.source == part.source for other in tuned.score.parts) > 1
-    for_all = shared_directions(layout)
-    if shared:
-        keep_only(tuned, part.index, music, named)
-    for one in layout:
-        if one.heading.id == part.source:
-            add_shared(one, 1 if shared else part.staff, for_all)
-    bodies = {id(body) for _, body in music.get(part.source, ())}
-    for element in list(root.iter("part")):
-        if id(element) not in bodies and not any(id(bar) in bodies for bar in element):
-            _cut(element)
-    own = next((element.get("id", "").strip() for element in root.iter("part")), "")
-    _keep_listed(root, own, part, shared)
-    _without_breaks(root)
-    order = {id(element): index for index, element in enumerate(elements_of(root))}
-    alone = EditedDocument(whole_text(root), limits)
-    return alone, {
-        source: alone.elements[order[id(note)]]
-        for source, note in named.items()
-        if id(note) in order
-    }
+
+    def __init__(
+        self,
+        tuned: TunedScore,
+        whole: EditedDocument,
+        named: Mapping[str, Element],
+        limits: Limits,
+    ) -> None:
+        self._tuned = tuned
+        self._whole = whole
+        self._limits = limits
+        self._layout = read_layout(whole.root, Log())
+        self._names = {id(note): source for source, note in named.items()}
+        self._for_all = shared_directions(self._layout)
+
+    def alone(self, part: Part) -> tuple[EditedDocument, Mapping[str, Element]]:
+        """The document of one part, and its note elements by `Note.sources`.
+
+        Line and page breaks of the whole score go, tempo and rehearsal marks that stand at
+        another staff come; a part that shares its staff gets its own name.
+        """
+        source = next(one for one in self._layout if one.heading.id == part.source)
+        bodies = {id(bar.body) for bar in source.bars}
+        others = [
+            element
+            for element in self._whole.root.iterfind(".//part")
+            if id(element) not in bodies and not any(id(bar) in bodies for bar in element)
+        ]
+        root = whole_tree(self._whole.utf8_without(others))
+        cut = read_layout(as_element(root), Log())[0]
+        notes = zip(_notes_of(source), _notes_of(cut), strict=True)
+        named = {self._names[id(old)]: as_node(new) for old, new in notes}
+        shared = sum(other.source == part.source for other in self._tuned.score.parts) > 1
+        if shared:
+            music = [(as_node(bar.frame), as_node(bar.body)) for bar in cut.bars]
+            keep_only(self._tuned, part.index, {part.source: music}, named)
+        add_shared(cut, 1 if shared else part.staff, self._for_all)
+        own = next((element.get("id", "").strip() for element in root.iter("part")), "")
+        _keep_listed(root, own, part, shared)
+        _without_breaks(root)
+        order = {id(element): index for index, element in enumerate(elements_of(root))}
+        alone = EditedDocument(whole_text(root), self._limits)
+        return alone, {
+            name: alone.elements[order[id(note)]]
+            for name, note in named.items()
+            if id(note) in order
+        }
+
+
+def _notes_of(part: PartSource) -> Iterator[Element]:
+    """The note elements of a part in order."""
+    for bar in part.bars:
+        yield from bar.body.iterchildren("note")
 
 
 def _keep_listed(root: Node, own: str, part: Part, shared: bool) -> None:

@@ -61,7 +61,7 @@ def _directions(layout: Sequence[PartSource]) -> Iterator[Shared]:
                 if element.tag == "direction":
                     says = _says(element)
                     if says:
-                        yield Shared(index, onset, says, copy_of(as_node(element)))
+                        yield Shared(index, onset, says, as_node(element))
 
 
 def _says(direction: Element) -> frozenset[str]:
@@ -86,10 +86,11 @@ def _says(direction: Element) -> frozenset[str]:
 
 
 def _put(one: Shared, body: Node, places: BarPlaces) -> None:
-    """Put a direction where its moment is in another part."""
-    for child in list(one.element):
+    """Put a copy of a direction where its moment is in another part."""
+    element = copy_of(one.element)
+    for child in list(element):
         if child.tag in _PLACED:
-            one.element.remove(child)
+            element.remove(child)
     place = places.at(one.onset)
     if place is not None:
         anchor: Node | None = as_node(place[0])
@@ -98,9 +99,9 @@ def _put(one: Shared, body: Node, places: BarPlaces) -> None:
         music = (child for child in body if child.tag not in _BEFORE_MUSIC)
         anchor, offset = next(music, None), offset_text(one.onset * places.divisions)
     if offset:
-        types = one.element.findall("direction-type")
+        types = element.findall("direction-type")
         types[-1].addnext(node("offset", offset))
     if anchor is None:
-        body.append(one.element)
+        body.append(element)
     else:
-        anchor.addprevious(one.element)
+        anchor.addprevious(element)
