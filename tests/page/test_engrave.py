@@ -352,3 +352,19 @@ def _heights(shown: Engraved) -> list[int]:
                 uses = [u for u in group.iter(f"{S}use") if u.get("href").startswith("#mE0A")]
                 found += [int(u.get("y")) - top for u in uses]
     return found
+
+
+def test_endings_are_drawn_with_their_numbers() -> None:
+    words = "".join(picture("regatta-day").systems)
+    assert re.search(r">1\.?<", words)
+    assert re.search(r">2\.?<", words)
+
+
+def test_a_part_by_itself_has_tempo_and_rehearsal_marks_of_the_highest_staff() -> None:
+    names = [part.name for part in tuned("regatta-day").score.parts]
+    for part in (names.index("Soprano 1"), names.index("Bass")):
+        words = "".join(picture("regatta-day", 1000, part).systems)
+        assert words.count("Bright, with a swing of the oar") == 1
+        assert words.count("A little slower") == 1
+        assert re.search(r">A<", words)
+        assert words.count("D.S. al Fine") == 1
