@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping
+from collections.abc import Iterable, Iterator, Mapping
 
 from retune.adapters.engraving_markup import Node, node
 from retune.tuning.model import TunedScore
@@ -26,13 +26,22 @@ def keep_only(
     played = {bar.written for bar in tuned.score.bars}
     for index, (_, body) in enumerate(music.get(wanted.source, [])):
         if index not in played:
-            # Of a bar outside an excerpt nothing is known: all of the staff stays.
-            own |= {id(e) for e in body.iterchildren("note") if _text(e, "staff") == staff}
+            own |= set(_by_voice(body, staff, wanted.voice))
         voices = {_text(e, "voice") for e in body.iterchildren("note") if id(e) in own}
         voices = voices or {_first_voice(body, staff)}
         for child in list(body):
             _settle(child, body, staff, voices, own)
         _join_chords(body)
+
+
+def _by_voice(body: Node, staff: str, voice: str) -> Iterator[int]:
+    """Note elements of a bar that is not played, as outside an excerpt: those of the part's voice.
+
+    All of the staff stays where that voice has none.
+    """
+    notes = [e for e in body.iterchildren("note") if _text(e, "staff") == staff]
+    own = [e for e in notes if _text(e, "voice") == voice and e.find("rest") is None]
+    yield from map(id, own or notes)
 
 
 def _settle(child: Node, body: Node, staff: str, voices: set[str], own: set[int]) -> None:

@@ -567,6 +567,18 @@ def test_an_excerpt_is_labelled_in_its_bars_and_the_rest_stays() -> None:
     assert "only in the bars that are played" in told(tuned)
 
 
+def test_an_excerpts_part_goes_by_its_voice_in_the_bars_around_it() -> None:
+    from retune.pipeline import cut
+
+    whole = fixture("harbour-hymn.musicxml")
+    data = written(cut(whole, "9-12"), NotationOptions(parts=Parts.YES))
+    alone = read_bytes(data["notation/Alto/Alto - harbour-hymn.musicxml"], "alone.musicxml")
+    index = [part.name for part in whole.score.parts].index("Alto")
+    assert [(n.onset, n.pitch) for n in alone.notes] == [
+        (n.onset, n.pitch) for n in whole.score.notes if n.part == index
+    ]
+
+
 def test_a_transposed_score_stays_in_its_own_key_and_says_so() -> None:
     plain = fixture("tide-motet.musicxml")
     moved = of_file(FIXTURES / "tide-motet.musicxml", ReadOptions(transpose=2))
