@@ -8,6 +8,7 @@ from typing import Any
 
 from retune.harmony.model import Chord, Role
 from retune.harmony.symbols import chord_symbol, symbol_of
+from retune.page.intervals import interval_name
 from retune.score.model import VoiceType
 from retune.tuning.model import Segment, TunedNote, TunedScore
 from retune.tuning.sounding import Row, sung_by_chord
@@ -17,28 +18,6 @@ from retune.voice.partials import chord_partial
 from retune.voice.vowelhint import hint
 
 _MOST_PAIRS = 8
-
-_INTERVALS = (
-    "octave",
-    "minor second",
-    "major second",
-    "minor third",
-    "major third",
-    "fourth",
-    "tritone",
-    "fifth",
-    "minor sixth",
-    "major sixth",
-    "minor seventh",
-    "major seventh",
-)
-_WIDE = {
-    13: "minor ninth",
-    14: "major ninth",
-    15: "minor tenth",
-    16: "major tenth",
-    19: "twelfth",
-}
 
 
 def cards(tuned: TunedScore) -> list[dict[str, Any]]:
@@ -117,23 +96,6 @@ def _pair(pair: Pair, sung: list[tuple[TunedNote, Segment]]) -> dict[str, Any]:
         "equal": round(pair.equal_hz, 3),
         "shared": [[s.low_partial, s.high_partial, round(s.hz, 1)] for s in pair.shared],
     }
-
-
-def interval_name(semitones: int) -> str:
-    """An interval in words, by its size in semitones from 1 up.
-
-    >>> [interval_name(size) for size in (4, 12, 16, 24, 28)]
-    ['major third', 'octave', 'major tenth', 'two octaves', 'major third and two octaves']
-    """
-    if semitones in _WIDE:
-        return _WIDE[semitones]
-    octaves, rest = divmod(semitones, 12)
-    count = {1: "an octave", 2: "two octaves", 3: "three octaves"}.get(
-        octaves, f"{octaves} octaves"
-    )
-    if rest == 0:
-        return "octave" if octaves == 1 else count
-    return f"{_INTERVALS[rest]} and {count}" if octaves else _INTERVALS[rest]
 
 
 def _whole(tones: list[SoundingTone]) -> float | None:

@@ -15,6 +15,7 @@ from typing import Any
 
 from retune.page.cards import cards
 from retune.page.drift import drift_data
+from retune.page.rehearsal import MOST_NOTES, concerning, hard_places, hardest
 from retune.score.model import Part, PartKind, VoiceType
 from retune.tracks.guides import first_chord, first_note
 from retune.tracks.leadin import beats_of, lead_in
@@ -30,6 +31,7 @@ _KEYS_APART = 5
 _RD = 1.1
 _PLACES = 5
 _SPREAD = 0.5
+_OWN_NOTES = 6
 
 LEGATO, DIP, ATTACK = 0, 1, 2
 """How a note begins: slurred on, with a new syllable, or from silence or on the same pitch."""
@@ -58,6 +60,7 @@ def page_data(
         "bars": _bars(tuned),
         "notes": list(_notes(tuned, noteheads)),
         "chords": cards(tuned),
+        "advice": _advice(tuned),
         "start": _start(tuned),
         "drift": drift_data(tuned, follow),
     }
@@ -142,6 +145,36 @@ def _notes(tuned: TunedScore, noteheads: Mapping[str, str]) -> Iterator[dict[str
             row["l"] = note.lyric
         last[note.part] = one
         yield row
+
+
+def _advice(tuned: TunedScore) -> list[dict[str, Any]]:
+    """What singers are told of single bars, in order: rehearsal notes so far.
+
+    `kind` says who tells it, `who` are indices of parts, [] for all; `main` marks the hardest
+    places of the piece, beside which each part has its own.
+    """
+    places = hard_places(tuned)
+    main = hardest(places, MOST_NOTES)
+    shown = set(main)
+    for part in tuned.score.parts:
+        if part.tuned:
+            shown |= set(hardest(concerning(places, part.index), _OWN_NOTES))
+    return [
+        {
+            "kind": "tuning",
+            "who": list(note.parts),
+            "at": [
+                [bar, _seconds(tuned.seconds(onset))]
+                for bar, onset in zip(note.bars, note.onsets, strict=True)
+            ],
+            "what": str(note.reason),
+            "text": note.text,
+            "listen": note.listen,
+            "main": note in main,
+        }
+        for note in places
+        if note in shown
+    ]
 
 
 def _equal_hz(tuned: TunedScore, one: TunedNote) -> float:

@@ -84,6 +84,16 @@ def chord_partial(
     return ChordPartial(tuple(int(common / ratio) for ratio in ratios), hz)
 
 
+def ordinal(number: int) -> str:
+    """The number of a partial in words.
+
+    >>> [ordinal(number) for number in (1, 2, 3, 4, 11, 12, 22)]
+    ['1st', '2nd', '3rd', '4th', '11th', '12th', '22nd']
+    """
+    ends = {1: "st", 2: "nd", 3: "rd"} if number % 100 not in (11, 12, 13) else {}
+    return f"{number}{ends.get(number % 10, 'th')}"
+
+
 def nearest_just(size: float, limit: int) -> Fraction | None:
     """The just interval nearest to a frequency ratio above 1, the simpler one of two as near.
 

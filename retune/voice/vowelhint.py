@@ -21,6 +21,7 @@ import numpy as np
 from retune.score.model import VoiceType
 from retune.voice.beats import Pair
 from retune.voice.formants import Formants, formants
+from retune.voice.partials import ordinal
 from retune.voice.spectrum import Floats, spectrum, transfer
 
 LEAST_MOVE, SLIGHT_MOVE, MOST_MOVE = 0.02, 0.08, 0.15
@@ -248,12 +249,7 @@ def _words(meeting: _Meeting, change: _Change, brighter: bool, names: Sequence[s
     slightly = "slightly " if _greatest(change.moves) <= SLIGHT_MOVE else "somewhat "
     return (
         f"A {slightly}{'brighter' if brighter else 'darker'} vowel in {names[meeting.tone]}, "
-        f"towards {change.toward}, brings out its {_ordinal(meeting.partial)} partial at "
-        f"{meeting.hz:.0f} Hz, which meets the {_ordinal(meeting.other_partial)} of "
+        f"towards {change.toward}, brings out its {ordinal(meeting.partial)} partial at "
+        f"{meeting.hz:.0f} Hz, which meets the {ordinal(meeting.other_partial)} of "
         f"{names[meeting.other]}: a mistuning between them is then easier to hear."
     )
-
-
-def _ordinal(number: int) -> str:
-    """1st, 2nd, 3rd, 4th and so on, up to the highest partials that are named."""
-    return f"{number}{ {1: 'st', 2: 'nd', 3: 'rd'}.get(number, 'th') }"

@@ -13,9 +13,9 @@ import pytest
 
 from retune.export.page import PageExporter, PageOptions
 from retune.page.build import script_json
-from retune.page.cards import interval_name
 from retune.page.data import page_data
 from retune.page.drift import purity_by_bar
+from retune.page.intervals import interval_name
 from retune.tracks.learning import excerpt
 from retune.tracks.take import Take
 from retune.tuning import tune

@@ -259,6 +259,33 @@ def test_starting_notes_and_count_in_come_before_the_music(hymn: Page) -> None:
     assert delay == pytest.approx(6 * slot + 5 * beat - 1.2, abs=0.4)
 
 
+def test_rehearsal_notes_lead_to_their_bars(hymn: Page) -> None:
+    notes = hymn.locator("#advice li")
+    assert notes.count() == 12
+    place = notes.last.locator("button").last
+    bar = place.inner_text()
+    place.click()
+    until(hymn, f"document.getElementById('where').textContent === 'B{bar[1:]}'")
+    # It is brought into sight, a little later where it slides there.
+    until(
+        hymn,
+        """(() => {
+            const box = document.querySelector(".cursor").getBoundingClientRect();
+            return box.top >= 0 && box.bottom <= innerHeight;
+        })()""",
+    )
+
+
+def test_rehearsal_notes_of_a_part_stand_first(hymn: Page) -> None:
+    hymn.select_option("#mypart", label="Tenor")
+    own, others = hymn.locator("#advice ul").all()
+    assert own.evaluate("list => list.previousSibling.textContent") == "Tenor"
+    assert own.locator("strong").count() == 0
+    assert "Tenor" not in others.locator("strong").all_inner_texts()
+    hymn.select_option("#mypart", "")
+    assert hymn.locator("#advice ul").count() == 1
+
+
 def test_the_card_says_what_the_note_list_says(hymn: Page) -> None:
     piece = tuned("harbour-hymn")
     listed = json.loads(

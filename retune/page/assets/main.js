@@ -40,6 +40,7 @@ class Page {
     this.shown = "plain";
     this.part = null;
     this.ownLine = false;
+    this.advice = new AdviceView(byId("advice"), byId("adviceview"), this.piece, (time) => this.goTo(time));
     this.view.adopt();
     new DriftView(byId("driftview"), this.piece, this.player);
     this.controls();
@@ -91,8 +92,15 @@ class Page {
     if (byId("ownline").disabled) byId("ownline").checked = false;
     this.ownLine = byId("ownline").checked;
     this.entries();
+    this.advice.show(index);
     this.fit();
     this.refresh();
+  }
+
+  // Goes to a place and brings it into sight.
+  goTo(time) {
+    this.player.seek(time);
+    this.view.reveal(time);
   }
 
   // Marks the staves and rows of the chosen part.

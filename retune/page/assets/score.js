@@ -149,6 +149,14 @@ class ScoreView {
     if (moving) this.light(time);
   }
 
+  // Brings the place of a time into sight, whether it plays or not.
+  reveal(time) {
+    this.row = null;
+    this.follow(time, false);
+    const place = this.grid ? this.grid.querySelector("tr.now") : this.cursor.parentNode;
+    if (place) place.scrollIntoView({ block: "center", behavior: calm() ? "auto" : "smooth" });
+  }
+
   followGrid(time, moving) {
     const index = chordAt(this.piece, time);
     if (this.row === index) return;
