@@ -8,6 +8,8 @@ from itertools import count
 from pathlib import Path
 from typing import TYPE_CHECKING
 
+from retune.choicesfile.direct import directed
+from retune.choicesfile.ratios import fitting_ratios
 from retune.errors import OutputError
 from retune.harmony import analyse
 from retune.score.read import read, read_bytes
@@ -19,7 +21,10 @@ from retune.tuning.policy import Temperament
 
 if TYPE_CHECKING:
     from retune.adapters.disk import WriteReport
+    from retune.choicesfile.direct import Directed
+    from retune.choicesfile.model import ChoicesFile
     from retune.export.base import Output
+    from retune.score.model import Score
     from retune.score.options import ReadOptions
     from retune.tracks.options import TrackOptions
     from retune.tuning.model import TunedScore
@@ -38,16 +43,52 @@ TRACK_OUTPUTS = ("audio", "midi")
 """What `tracks` writes."""
 
 
-def retuned(source: Path | bytes, name: str, reading: ReadOptions, policy: Policy) -> TunedScore:
-    """Read, analyse and tune one score; `name` stands for the file in messages."""
-    if isinstance(source, bytes):
-        score = read_bytes(source, name, reading)
-    else:
-        score = read(source, reading)
-    if policy.tonic is not None:
-        # The user names it as it stands in the score.
-        policy = replace(policy, tonic=moved(policy.tonic, score.transposition))
+def retuned(
+    source: Path | bytes,
+    name: str,
+    reading: ReadOptions,
+    policy: Policy,
+    file: ChoicesFile | None = None,
+) -> TunedScore:
+    """Read, analyse and tune one score as the director has it.
+
+    Parameters
+    ----------
+    name : str
+        Stands for the score in messages.
+    file : ChoicesFile, optional
+        The director's decisions. Those that no longer fit the score are left out, each with a
+        finding.
+    """
+
+    def scored(options: ReadOptions) -> Score:
+        return (
+            read_bytes(source, name, options)
+            if isinstance(source, bytes)
+            else read(source, options)
+        )
+
+    if file is not None:
+        return _as_directed(directed(scored, reading, policy, file))
+    score = scored(reading)
+    policy = _in_key(policy, score)
     return tune(score, analyse(score, policy.tonic), policy)
+
+
+def _in_key(policy: Policy, score: Score) -> Policy:
+    """The policy with its tonic, which the user names as the file has it, as the score has it."""
+    if policy.tonic is None:
+        return policy
+    return replace(policy, tonic=moved(policy.tonic, score.transposition))
+
+
+def _as_directed(wish: Directed) -> TunedScore:
+    policy = _in_key(wish.policy, wish.score)
+    harmony = analyse(wish.score, policy.tonic, wish.choices)
+    file = wish.survey.file
+    choices, told = fitting_ratios(wish.score, harmony, wish.choices, wish.ratio_lines, file)
+    tuned = tune(wish.score, harmony, policy, choices)
+    return replace(tuned, findings=(*told, *tuned.findings))
 
 
 def cut(tuned: TunedScore, bars: str) -> TunedScore:

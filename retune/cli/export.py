@@ -25,6 +25,7 @@ from retune.errors import OutputError, WishError
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
+    from retune.choicesfile.model import ChoicesFile
     from retune.export.base import Output
     from retune.score.options import ReadOptions
     from retune.tuning.policy import Policy
@@ -68,6 +69,7 @@ def command(
     settings: tuple[tuple[str, str, str], ...],
     policy: Policy,
     reading: ReadOptions,
+    choices: ChoicesFile | None,
     all_findings: bool,
     quiet: bool,
 ) -> None:
@@ -83,7 +85,7 @@ def command(
     pipeline.check_wishes(chosen, wishes)
     source, name = source_of(score)
     with working(f"Tuning {name}", quiet):
-        tuned = pipeline.retuned(source, name, reading, policy)
+        tuned = pipeline.retuned(source, name, reading, policy, choices)
         if bars:
             tuned = pipeline.cut(tuned, bars)
     failed: list[OutputError] = []

@@ -14,6 +14,7 @@ from retune.errors import OutputError
 
 if TYPE_CHECKING:
     from retune.adapters.disk import WriteReport
+    from retune.choicesfile.model import ChoicesFile
     from retune.cli.track_options import Practice
     from retune.score.options import ReadOptions
     from retune.tuning.policy import Policy
@@ -29,6 +30,7 @@ def learn(
     policy: Policy,
     reading: ReadOptions,
     practice: Practice,
+    choices: ChoicesFile | None,
     all_findings: bool,
     quiet: bool,
 ) -> WriteReport:
@@ -47,7 +49,7 @@ def learn(
         raise click.UsageError("a score from standard input needs -o FOLDER")
     source, name = source_of(score)
     with working(f"Tuning {name}", quiet):
-        tuned = pipeline.retuned(source, name, reading, policy)
+        tuned = pipeline.retuned(source, name, reading, policy, choices)
         if bars:
             tuned = pipeline.cut(tuned, bars)
         takes = pipeline.learning_tracks(tuned, practice.tracks)

@@ -8,6 +8,7 @@ from typing import Any
 
 import click
 
+from retune.cli.choices_option import choices_option
 from retune.cli.policy_options import policy_options
 from retune.cli.reading_options import reading_options
 from retune.cli.stacking import Command, stacked
@@ -16,11 +17,13 @@ STDIN_NAME = "standard input"
 
 
 def tuning_options(command: Command) -> Command:
-    """Options on reading and tuning; the command gets `reading` and `policy`."""
-    return policy_options(reading_options(command))
+    """Options on reading and tuning; the command gets `reading`, `policy` and `choices`."""
+    return choices_option(policy_options(reading_options(command)))
 
 
-score_argument = click.argument("score", type=click.Path(path_type=Path, allow_dash=True))
+score_argument = click.argument(
+    "score", type=click.Path(path_type=Path, allow_dash=True), is_eager=True
+)
 """SCORE: a file, or - for standard input."""
 
 folder_option = click.option(

@@ -27,6 +27,7 @@ from retune.cli.options import (
 from retune.cli.report import report_findings, summary
 
 if TYPE_CHECKING:
+    from retune.choicesfile.model import ChoicesFile
     from retune.score.model import Score
     from retune.score.options import ReadOptions
     from retune.tuning.policy import Policy
@@ -70,6 +71,7 @@ def command(
     settings: tuple[tuple[str, str, str], ...],
     policy: Policy,
     reading: ReadOptions,
+    choices: ChoicesFile | None,
     all_findings: bool,
     quiet: bool,
 ) -> None:
@@ -90,7 +92,7 @@ def command(
     try:
         source, name = source_of(score)
         with working(f"Tuning {name}", quiet):
-            tuned = pipeline.retuned(source, name, reading, policy)
+            tuned = pipeline.retuned(source, name, reading, policy, choices)
             if bars:
                 tuned = pipeline.cut(tuned, bars)
             music = programme_of(tuned, wishes.get("midi"))

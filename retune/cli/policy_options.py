@@ -7,6 +7,7 @@ from typing import Any
 
 import click
 
+from retune.cli.choices_option import from_file
 from retune.cli.stacking import gathered, stacked
 from retune.errors import UnreadableError, WishError
 from retune.pitch import PitchClass
@@ -151,9 +152,9 @@ _POLICY = stacked(
 
 
 def _policy(wishes: dict[str, Any]) -> Policy:
-    if wishes["drift_within"] is not None and wishes["drift"] != Drift.WITHIN:
-        raise click.UsageError("--drift-within goes with --drift within")
     within = wishes["drift_within"]
+    if within is not None and wishes["drift"] != Drift.WITHIN and not from_file("drift_within"):
+        raise click.UsageError("--drift-within goes with --drift within")
     return Policy(
         prime_limit=int(wishes["prime_limit"]),
         drift=Drift(wishes["drift"]),

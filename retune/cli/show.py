@@ -19,6 +19,7 @@ from retune.cli.options import (
 from retune.cli.report import report_findings, summary
 
 if TYPE_CHECKING:
+    from retune.choicesfile.model import ChoicesFile
     from retune.score.options import ReadOptions
     from retune.tuning.policy import Policy
 
@@ -53,6 +54,7 @@ def command(
     part: str | None,
     policy: Policy,
     reading: ReadOptions,
+    choices: ChoicesFile | None,
     all_findings: bool,
     quiet: bool,
 ) -> None:
@@ -67,7 +69,7 @@ def command(
         raise click.UsageError("--part goes with --rehearsal-notes")
     source, name = source_of(score)
     with working(f"Tuning {name}", quiet):
-        tuned = pipeline.retuned(source, name, reading, policy)
+        tuned = pipeline.retuned(source, name, reading, policy, choices)
     wanted = bar_range(tuned.score, bars) if bars else None
     lines = [summary(tuned), ""]
     if rehearsing:

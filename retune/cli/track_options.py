@@ -10,6 +10,7 @@ from typing import Any
 
 import click
 
+from retune.cli.choices_option import from_file
 from retune.cli.stacking import gathered, stacked
 from retune.errors import WishError
 from retune.tracks.options import (
@@ -224,7 +225,7 @@ def _practice(wishes: dict[str, Any]) -> Practice:
     sound = {
         name: str(wishes[name])
         for name in ("vowel", "language", "soundfont")
-        if wishes[name] is not None
+        if wishes[name] is not None and not (wishes["audio"] == "none" and from_file(name))
     }
     if sound and wishes["audio"] == "none":
         raise click.UsageError(f"--{next(iter(sound))} is for sound, and --audio none makes none")

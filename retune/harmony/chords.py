@@ -12,8 +12,13 @@ Conventions
 
 from __future__ import annotations
 
+from bisect import bisect_right
+from collections.abc import Sequence
+from dataclasses import replace
+
 import numpy as np
 
+from retune.choices import ChordChoice
 from retune.harmony.evidence import Evidence
 from retune.harmony.metre import TOLERANCE
 from retune.harmony.model import Chord, Quality
@@ -35,11 +40,24 @@ _SILENCE = -1
 """The state of slices in which nothing sounds and no chord lasts."""
 
 
-def make_chords(timeline: Timeline, evidence: Evidence, found: Segmentation) -> tuple[Chord, ...]:
-    """The chords of a segmentation, covering all slices."""
+def make_chords(
+    timeline: Timeline,
+    evidence: Evidence,
+    found: Segmentation,
+    choices: Sequence[ChordChoice] = (),
+) -> tuple[Chord, ...]:
+    """The chords of a segmentation, covering all slices; those that were chosen as chosen."""
     if evidence.count == 0:
         return ()
     states = _plain_where_lone(evidence, _with_rests(evidence, found.states))
+    decided = _decide(timeline, found, states, choices)
+    chords = _chords(timeline, evidence, found, states)
+    return tuple(_as_decided(chord, decided) for chord in chords) if decided else chords
+
+
+def _chords(
+    timeline: Timeline, evidence: Evidence, found: Segmentation, states: Ints
+) -> tuple[Chord, ...]:
     firsts = _firsts(states)
     lasts = [*firsts[1:].tolist(), evidence.count]
     shares = _shares(evidence, found, firsts) * _trust(evidence, firsts)[:, None, None]
@@ -48,6 +66,56 @@ def make_chords(timeline: Timeline, evidence: Evidence, found: Segmentation) -> 
         _chord(index, (first, last), int(states[first]), timeline, shares[index], heard[index])
         for index, (first, last) in enumerate(zip(firsts.tolist(), lasts, strict=True))
     )
+
+
+def _decide(
+    timeline: Timeline, found: Segmentation, states: Ints, choices: Sequence[ChordChoice]
+) -> dict[int, ChordChoice]:
+    """Set the states of chosen chords; returns the choices by slice."""
+    decided: dict[int, ChordChoice] = {}
+    firsts = _firsts(states).tolist()
+    for choice in choices:
+        if choice.root is None and choice.quality is None:
+            continue
+        first = max(bisect_right(timeline.boundaries, choice.onset) - 1, 0)
+        if choice.end is None:
+            after = bisect_right(firsts, first)
+            last = firsts[after] if after < len(firsts) else len(states)
+        else:
+            last = max(bisect_right(timeline.boundaries, choice.end) - 1, first + 1)
+        last = min(last, len(states))
+        state = _chosen(found, states, first, last, choice)
+        if state is None:
+            continue
+        sounding = states[first:last] != _SILENCE
+        states[first:last][sounding] = state
+        decided |= dict.fromkeys(range(first, last), choice)
+    return decided
+
+
+def _chosen(
+    found: Segmentation, states: Ints, first: int, last: int, choice: ChordChoice
+) -> int | None:
+    """The state of a choice; a quality it leaves open is the likeliest over the root."""
+    before = states[first:last][states[first:last] != _SILENCE]
+    if not len(before):
+        return None
+    root = int(before[0]) // len(QUALITIES) if choice.root is None else choice.root.chroma
+    if choice.quality is not None:
+        return root * len(QUALITIES) + QUALITIES.index(Quality(choice.quality))
+    shares = found.posterior[first:last].reshape(-1, ROOTS, len(QUALITIES))[:, root]
+    return root * len(QUALITIES) + int(shares.sum(axis=0).argmax())
+
+
+def _as_decided(chord: Chord, decided: dict[int, ChordChoice]) -> Chord:
+    """A chord that the director chose is sure, and its root spelled as it was chosen."""
+    own = next((decided[i] for i in range(chord.first, chord.last) if i in decided), None)
+    if own is None or chord.root is None:
+        return chord
+    root = chord.root
+    if own.root is not None and own.root.chroma == root.chroma:
+        root = own.root
+    return replace(chord, root=root, confidence=1.0, runner_up=None, decided=True)
 
 
 def _firsts(states: Ints) -> Ints:

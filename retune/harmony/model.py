@@ -80,7 +80,7 @@ class Chord:
     """One chord: its time, root, quality, confidence (0 to 1) and the next likely reading.
 
     `added` are tones beyond the quality's own: a sixth, a ninth, or a fourth or second in place
-    of a third that never sounds.
+    of a third that never sounds. `decided` says that the director chose the root or quality.
     """
 
     index: int
@@ -93,6 +93,7 @@ class Chord:
     confidence: float
     runner_up: tuple[PitchClass, Quality] | None = None
     added: tuple[Degree, ...] = ()
+    decided: bool = False
 
     @property
     def doubtful(self) -> bool:

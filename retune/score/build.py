@@ -12,10 +12,11 @@ from fractions import Fraction
 
 from retune.errors import Finding, LimitError, Place, RetuneError, UnreadableError
 from retune.score.bars import Frame, align
-from retune.score.fermatas import fermata_spans
+from retune.score.fermatas import HeldSpan, held_spans
 from retune.score.ledger import Ledger
 from retune.score.lines import Line
 from retune.score.model import Bar, ChordSymbol, Part, Score
+from retune.score.naming import short_name
 from retune.score.options import ReadOptions
 from retune.score.order import Step, playing_order
 from retune.score.pace import Pace
@@ -110,8 +111,10 @@ def _tempo(
     ledger: Ledger,
     options: ReadOptions,
 ) -> TempoMap:
-    fermatas = fermata_spans(written, frames) if options.fermatas else [()] * len(frames)
-    return tempo_map(written, frames, steps, fermatas, ledger, options.tempo)
+    fermatas: Sequence[tuple[HeldSpan, ...]] = [()] * len(frames)
+    if options.fermatas:
+        fermatas = held_spans(written, frames, options.holds)
+    return tempo_map(written, frames, steps, fermatas, ledger, options.tempo, options.tempi)
 
 
 def _in_file(written: WrittenScore, file: str | None) -> Iterator[Finding]:
@@ -180,8 +183,7 @@ def _abbreviation(line: Line, lines: Sequence[Line], written: WrittenScore) -> s
     own = written.parts[line.written].abbreviation.strip()
     if own and sum(other.written == line.written for other in lines) == 1:
         return own
-    first, _, last = line.label.name.partition(" ")
-    return first[:1] + (last if last[:1].isdigit() else "")
+    return short_name(line.label.name)
 
 
 def _chord_symbols(written: WrittenScore, bars: Sequence[Bar]) -> tuple[ChordSymbol, ...]:

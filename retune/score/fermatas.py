@@ -10,12 +10,43 @@ from collections.abc import Iterator, Sequence
 from fractions import Fraction
 
 from retune.score.bars import Frame
+from retune.score.options import Hold
 from retune.written import MarkKind, WrittenBar, WrittenNote, WrittenRest, WrittenScore
 
 STRETCH = Fraction(7, 4)
 """How much longer a fermata lasts (common practice, no source: near double)."""
 
 Span = tuple[Fraction, Fraction]
+HeldSpan = tuple[Fraction, Fraction, Fraction]
+"""Start and stop inside the bar, and how many times as long it lasts."""
+
+
+def held_spans(
+    written: WrittenScore, frames: Sequence[Frame], holds: Sequence[Hold]
+) -> list[tuple[HeldSpan, ...]]:
+    """For each bar the spans that are stretched: its fermatas, with those that are wished."""
+    found = [dict.fromkeys(spans, STRETCH) for spans in fermata_spans(written, frames)]
+    for hold in holds:
+        own = found[hold.written]
+        span = next((one for one in own if one[0] <= hold.inside < one[1]), None)
+        if span is None:
+            span = (hold.inside, _end_of_sounding(written, frames[hold.written], hold.inside))
+        own[span] = hold.times
+    return [
+        tuple((*span, times) for span, times in sorted(spans.items()) if times != 1)
+        for spans in found
+    ]
+
+
+def _end_of_sounding(written: WrittenScore, frame: Frame, inside: Fraction) -> Fraction:
+    """Where the first of the notes that sound at a place ends, no later than its bar."""
+    ends = [
+        note.onset + note.duration
+        for part in written.parts
+        for note in part.bars[frame.index].notes
+        if note.onset <= inside < note.onset + note.duration
+    ]
+    return min([*ends, frame.length])
 
 
 def fermata_spans(written: WrittenScore, frames: Sequence[Frame]) -> list[tuple[Span, ...]]:

@@ -199,6 +199,16 @@ class ChordSymbol:
     bass: PitchClass | None = None
 
 
+@dataclass(frozen=True, slots=True)
+class SingerNote:
+    """What the director tells singers about a stretch of bars; `parts` are indices."""
+
+    onset: Fraction
+    end: Fraction
+    parts: tuple[int, ...]
+    text: str
+
+
 @dataclass(frozen=True)
 class Score:
     """A piece as played.
@@ -224,6 +234,7 @@ class Score:
     left_out: tuple[str, ...] = ()
     findings: tuple[Finding, ...] = ()
     transposition: Transposition = Transposition()
+    singer_notes: tuple[SingerNote, ...] = ()
     source: bytes = field(default=b"", repr=False, compare=False)
     _bar_onsets: tuple[Fraction, ...] = field(init=False, repr=False, compare=False)
 

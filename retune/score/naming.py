@@ -20,6 +20,16 @@ STRETCH = 4
 FOUR_VOICES = (VoiceType.SOPRANO, VoiceType.ALTO, VoiceType.TENOR, VoiceType.BASS)
 
 
+def short_name(name: str) -> str:
+    """First letter, and the number of a divided part.
+
+    >>> short_name("Soprano"), short_name("Tenor 2")
+    ('S', 'T2')
+    """
+    first, _, last = name.partition(" ")
+    return first[:1] + (last if last[:1].isdigit() else "")
+
+
 def named(lines: Sequence[Line], ledger: Ledger) -> list[Line]:
     """The lines with steady, different names, and with voice types for those that sing."""
     labelled = _as_four_voices(lines, ledger)

@@ -3,9 +3,29 @@
 from __future__ import annotations
 
 from dataclasses import dataclass, field
+from fractions import Fraction
 
 from retune.limits import Limits
 from retune.score.pace import Pace
+
+
+@dataclass(frozen=True, slots=True)
+class TempoAt:
+    """Beats a minute, as they are counted, from a place on: the bar's number in the file from 0,
+    and quarter notes from its start."""
+
+    written: int
+    inside: Fraction
+    beats: Fraction
+
+
+@dataclass(frozen=True, slots=True)
+class Hold:
+    """What sounds at a place lasts `times` as long; 1 takes a fermata away."""
+
+    written: int
+    inside: Fraction
+    times: Fraction
 
 
 @dataclass(frozen=True, slots=True)
@@ -29,6 +49,13 @@ class ReadOptions:
         Semitones by which all is moved, see `transpose.FURTHEST`.
     tempo : Pace
         The score's own tempo, a share of it, or a steady one.
+    voices, doubled : tuple of str
+        Names of parts that follow the just targets, and of parts that only double others and do
+        not sound, whatever the file says of them.
+    tempi : tuple of TempoAt
+        Tempi besides those of the score.
+    holds : tuple of Hold
+        How long single fermatas last.
     """
 
     repeats: bool = True
@@ -38,3 +65,7 @@ class ReadOptions:
     piece: int | None = None
     transpose: int = 0
     tempo: Pace = field(default_factory=Pace)
+    voices: tuple[str, ...] = ()
+    doubled: tuple[str, ...] = ()
+    tempi: tuple[TempoAt, ...] = ()
+    holds: tuple[Hold, ...] = ()

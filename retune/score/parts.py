@@ -43,6 +43,8 @@ def cast_parts(
         A part that the user names is not in the score.
     """
     wishes = {name.strip().casefold() for name in options.accompaniment}
+    voices = {name.strip().casefold() for name in options.voices}
+    doubled = {name.strip().casefold() for name in options.doubled}
     sounding = [
         (index, part) for index, part in enumerate(written.parts) if any(b.notes for b in part.bars)
     ]
@@ -51,8 +53,11 @@ def cast_parts(
     lines: list[Line] = []
     for index, part in sounding:
         reading = readings[index]
-        wished = display_name(part).casefold() in wishes
-        if reading.role in FIXED_ROLES and (wished or not only_fixed):
+        name = display_name(part).casefold()
+        wished, sung = name in wishes, name in voices
+        if sung:
+            lines.extend(split_part(index, part, reading.labels, True, frames, ledger))
+        elif reading.role in FIXED_ROLES and (wished or not only_fixed):
             lines.append(whole_part(index, part, PartKind.ACCOMPANIMENT, frames))
         else:
             singers = reading.role is not Role.INSTRUMENT
@@ -61,7 +66,7 @@ def cast_parts(
                 what = "the score has no part for voices; the lines of this one are tuned instead"
                 ledger.add(Weight.DOUBT, what, display_name(part))
     lines = _fixed_on_wish(named(lines, ledger), written, wishes, options, ledger.file)
-    kept, reductions = _without_reductions(lines, written, readings, wishes, ledger)
+    kept, reductions = _without_reductions(lines, written, readings, wishes, doubled, ledger)
     return Casting(tuple(kept), (*reductions, *_unpitched(written, readings, ledger)))
 
 
@@ -140,6 +145,7 @@ def _without_reductions(
     written: WrittenScore,
     readings: dict[int, NameReading],
     wishes: set[str],
+    doubled: set[str],
     ledger: Ledger,
 ) -> tuple[list[Line], list[str]]:
     """The lines that sound, and the names of the reductions that do not."""
@@ -148,6 +154,10 @@ def _without_reductions(
     left_out: list[str] = []
     for line in lines:
         part = written.parts[line.written]
+        if _wished(line, part, doubled):
+            left_out.append(line.label.name)
+            ledger.add(Weight.NOTE, "left out: the choices say it is doubled", line.label.name)
+            continue
         why = "" if _wished(line, part, wishes) else _reduction(line, part, readings, voices)
         if not why:
             kept.append(line)

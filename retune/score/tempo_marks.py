@@ -21,9 +21,10 @@ from math import ceil
 
 from retune.errors import Weight
 from retune.score.bars import Frame
-from retune.score.fermatas import STRETCH, Span
+from retune.score.fermatas import HeldSpan
 from retune.score.ledger import Ledger
 from retune.score.model import counted_beat
+from retune.score.options import TempoAt
 from retune.score.order import Step
 from retune.score.pace import Pace
 from retune.score.tempo import DEFAULT_QPM, TempoChange, TempoMap
@@ -50,16 +51,26 @@ def tempo_map(
     written: WrittenScore,
     frames: Sequence[Frame],
     steps: Sequence[Step],
-    fermatas: Sequence[tuple[Span, ...]],
+    fermatas: Sequence[tuple[HeldSpan, ...]],
     ledger: Ledger,
     pace: Pace,
+    wished: Sequence[TempoAt] = (),
 ) -> TempoMap:
-    """The tempo of the piece as played; `fermatas` holds the stretched spans of each bar."""
+    """The tempo of the piece as played.
+
+    Parameters
+    ----------
+    fermatas : sequence of tuples
+        The stretched spans of each bar.
+    wished : sequence of TempoAt
+        Tempi that stand before those of the score.
+    """
     starts = list(accumulate((frame.length for frame in frames), initial=Fraction(0)))
     if pace.beats is not None:
         curve = [(Fraction(0), pace.beats * _counted_beat(frames))]
     else:
-        curve = _curve(_events(written, frames, starts, ledger), starts, fermatas, ledger)
+        events = _events(written, frames, starts, ledger, wished)
+        curve = _curve(events, starts, fermatas, ledger)
         curve = [(time, qpm * pace.share) for time, qpm in curve]
     bars = [
         list(_in_bar(curve, start, frame.length, spans))
@@ -82,7 +93,11 @@ def _counted_beat(frames: Sequence[Frame]) -> Fraction:
 
 
 def _events(
-    written: WrittenScore, frames: Sequence[Frame], starts: Sequence[Fraction], ledger: Ledger
+    written: WrittenScore,
+    frames: Sequence[Frame],
+    starts: Sequence[Fraction],
+    ledger: Ledger,
+    wished: Sequence[TempoAt],
 ) -> list[_Event]:
     """Tempo events of all parts in order, one at a time; numbers win over words."""
     numbers: dict[Fraction, _Event] = {}
@@ -97,6 +112,11 @@ def _events(
                 elif mark.kind is MarkKind.WORDS and (word := tempo_word(str(mark.value or ""))):
                     scaled = _in_quarters(word, frame)
                     words.setdefault(time, _Event(time, frame.index, scaled))
+    for one in wished:
+        time, frame = starts[one.written] + one.inside, frames[one.written]
+        qpm = one.beats * counted_beat(frame.metre)
+        numbers[time] = _Event(time, frame.index, TempoWord(Turn.SET, qpm))
+        words.pop(time, None)
     merged = {**words, **numbers}
     for time in words.keys() & numbers.keys():
         if words[time].word.turn is Turn.RAMP:
@@ -145,7 +165,7 @@ _Curve = list[tuple[Fraction, Fraction]]
 def _curve(
     events: Sequence[_Event],
     starts: Sequence[Fraction],
-    fermatas: Sequence[tuple[Span, ...]],
+    fermatas: Sequence[tuple[HeldSpan, ...]],
     ledger: Ledger,
 ) -> _Curve:
     first = next((event for event in events if event.word.turn is Turn.SET), None)
@@ -156,7 +176,7 @@ def _curve(
     ends = [
         start + stop
         for start, spans in zip(starts[:-1], fermatas, strict=True)
-        for _, stop in spans
+        for _, stop, _ in spans
     ]
     curve: _Curve = [(Fraction(0), opening)]
     base = current = opening
@@ -211,7 +231,7 @@ def _ramp(
 
 
 def _in_bar(
-    curve: _Curve, start: Fraction, length: Fraction, spans: Sequence[Span]
+    curve: _Curve, start: Fraction, length: Fraction, spans: Sequence[HeldSpan]
 ) -> Iterator[tuple[Fraction, Fraction]]:
     """Tempo changes inside a bar from its start on, fermatas stretched."""
     first = max(bisect_right(curve, start, key=lambda entry: entry[0]) - 1, 0)
@@ -221,10 +241,10 @@ def _in_bar(
             break
         inside.append((time - start, qpm))
     cuts = sorted(
-        {Fraction(0), *(time for time, _ in inside), *(t for span in spans for t in span)}
+        {Fraction(0), *(time for time, _ in inside), *(t for span in spans for t in span[:2])}
     )
     for cut in cuts:
         if cut < length:
             qpm = inside[bisect_right(inside, cut, key=lambda entry: entry[0]) - 1][1]
-            held = any(begin <= cut < stop for begin, stop in spans)
-            yield cut, qpm / STRETCH if held else qpm
+            times = next((t for begin, stop, t in spans if begin <= cut < stop), Fraction(1))
+            yield cut, qpm / times

@@ -17,7 +17,7 @@ from dataclasses import dataclass, replace
 from fractions import Fraction
 
 from retune.harmony.model import Chord, Fragment, Harmony, Slice
-from retune.score.model import Bar, ChordSymbol, Note, Score
+from retune.score.model import Bar, ChordSymbol, Note, Score, SingerNote
 from retune.score.tempo import TempoChange, TempoMap
 from retune.tuning.model import Segment, TunedNote, TunedScore
 
@@ -87,6 +87,7 @@ class _Row:
         self.roots: list[float | None] = []
         self.fragments: list[Fragment] = []
         self.symbols: list[ChordSymbol] = []
+        self.told: list[SingerNote] = []
 
     def rest(self, silence: Silence, following: Stretch) -> None:
         """Silent bars, in the metre and key of the bar that follows."""
@@ -131,6 +132,11 @@ class _Row:
             replace(one, onset=one.onset + shift)
             for one in score.chord_symbols
             if start <= one.onset < stop
+        ]
+        self.told += [
+            replace(one, onset=max(one.onset, start) + shift, end=min(one.end, stop) + shift)
+            for one in score.singer_notes
+            if one.onset < stop and one.end > start
         ]
         self.end += stop - start
 
@@ -241,6 +247,7 @@ class _Row:
             bars=tuple(self.bars),
             tempo=TempoMap(tuple(self.tempi)),
             chord_symbols=tuple(self.symbols),
+            singer_notes=tuple(self.told),
         )
         harmony = replace(
             first.harmony,

@@ -7,6 +7,8 @@ Conventions
 
 from __future__ import annotations
 
+from collections.abc import Mapping, Sequence
+from fractions import Fraction
 from functools import cache
 from itertools import combinations
 
@@ -15,6 +17,7 @@ import numpy as np
 from retune.harmony.model import Degree, Harmony
 from retune.score.model import Score
 from retune.tuning.intervals import CONSONANT, consonances, nearest
+from retune.tuning.layout import Layout
 from retune.tuning.ratios import AUGMENTED_SIXTH, Template, templates, with_added
 
 Options = list[tuple[Template, ...]]
@@ -61,8 +64,11 @@ def is_exception(template: Template, first: Template) -> bool:
     return template.semitones[:4] == _DOMINANT and template.limit < 7 <= first.limit
 
 
-def options_of(score: Score, harmony: Harmony, limit: int) -> Options:
-    """The templates each chord may take, the preferred one first; none where nothing sounds."""
+def options_of(score: Score, harmony: Harmony, limits: Sequence[int]) -> Options:
+    """The templates each chord may take, the preferred one first; none where nothing sounds.
+
+    `limits` holds the prime limit of each chord.
+    """
     sixths = sixth_chords(score, harmony)
     return [
         tuple(
@@ -71,8 +77,24 @@ def options_of(score: Score, harmony: Harmony, limit: int) -> Options:
         )
         if chord.quality
         else ()
-        for chord in harmony.chords
+        for chord, limit in zip(harmony.chords, limits, strict=True)
     ]
+
+
+def that_agree(options: Options, layout: Layout, ratios: Mapping[int, Fraction]) -> Options:
+    """The alternatives that hold the ratios given to single pieces, where a chord has any."""
+    kept = list(options)
+    for piece, ratio in ratios.items():
+        chord, degree = int(layout.chord[piece]), int(layout.degree[piece])
+        agreeing = tuple(
+            one
+            for one in kept[chord]
+            if one.ratios is not None
+            and 0 <= degree < len(one.ratios)
+            and one.ratios[degree] == ratio
+        )
+        kept[chord] = agreeing or kept[chord]
+    return kept
 
 
 def preferred(options: Options) -> tuple[Template | None, ...]:

@@ -18,6 +18,7 @@ from retune.harmony.model import Harmony, Role
 from retune.pitch import PitchClass
 from retune.score.model import Note, Score
 from retune.tuning.fixed import CentsOf
+from retune.tuning.ground import Ground
 from retune.tuning.intervals import Flags, Floats
 from retune.tuning.layout import Layout
 from retune.tuning.model import Segment, TunedNote
@@ -80,7 +81,7 @@ class Assembler:
     targets: Targets
     x: Floats
     roots: tuple[float | None, ...]
-    limit: int
+    ground: Ground
     just: bool
 
     def notes(self, scale: CentsOf, unmoving: CentsOf) -> tuple[TunedNote, ...]:
@@ -142,12 +143,14 @@ class Assembler:
         template, root = self.targets.templates[chord], self.roots[chord]
         if not self.just or layout.lone[piece] or not layout.tuned[piece]:
             return None
+        if self.targets.decided[piece]:
+            return self.ground.ratios[piece]
         if template is None or template.ratios is None or root is None:
             return None
         if layout.degree[piece] >= 0:
             return template.ratios[int(layout.degree[piece])]
         spelled = int(layout.fifths[piece]) - self._root(chord).fifths
-        return _nearest_ratio(spelled, float(self.x[piece]) - root, self.limit)
+        return _nearest_ratio(spelled, float(self.x[piece]) - root, int(self.ground.limit[chord]))
 
     def _root(self, chord: int) -> PitchClass:
         root = self.harmony.chords[chord].root
@@ -173,7 +176,7 @@ class Assembler:
             degree = template.spelled.index(spelled)
             ratio = template.ratios[degree] if template.ratios else None
             return ratio, root + template.cents[degree]
-        ratio = just_intervals(spelled, self.limit)[0]
+        ratio = just_intervals(spelled, int(self.ground.limit[chord]))[0]
         return ratio, root + _off_equal(ratio, spelled)
 
 

@@ -17,9 +17,9 @@ from dataclasses import dataclass
 import numpy as np
 
 from retune.tuning.alternatives import Options, is_exception, wolves
+from retune.tuning.ground import Ground
 from retune.tuning.intervals import Flags, Floats, Ints, steps
 from retune.tuning.layout import Layout
-from retune.tuning.policies import Weights
 from retune.tuning.ratios import DEGREES, Template
 from retune.tuning.rows import CHOIR, held_weights, melodic_weights
 
@@ -41,8 +41,9 @@ _LINKS_AT_ONCE = 20_000
 _DEGREES = len(DEGREES) + 1  # the last one stands for none
 
 
-Cost = Callable[[Floats, Floats, Ints], Floats]
-"""Weight, change in cents and distance in semitones of links -> cost at every change of root."""
+Cost = Callable[[Floats, Floats, Ints, Floats], Floats]
+"""Weight, change in cents, distance in semitones and cap of links -> cost at every change of
+root."""
 
 
 @dataclass(frozen=True)
@@ -71,10 +72,8 @@ class Chooser:
         Chords on the home tonic.
     fixed : ndarray, shape (chords,)
         Each root's cents in the tuning of the parts that cannot move.
-    cap : float
-        The most a held note may move, in cents.
-    lead : int or None
-        Index of the part kept smoothest.
+    ground : Ground
+        The wishes for every chord; steps are those of the largest limit in it.
     """
 
     def __init__(
@@ -84,14 +83,12 @@ class Chooser:
         places: Floats,
         home: Flags,
         fixed: Floats,
-        weights: Weights,
-        limit: int,
-        cap: float,
-        lead: int | None,
+        ground: Ground,
     ) -> None:
         self.layout, self.options = layout, options
-        self.places, self.home, self.fixed, self.lead = places, home, fixed, lead
-        self.weights, self.limit, self.cap = weights, limit, cap
+        self.places, self.home, self.fixed = places, home, fixed
+        self.ground, self.weights = ground, ground.weights
+        self.limit = int(ground.limit.max(initial=3))
         self.count = np.array([max(len(one), 1) for one in options], dtype=np.int64)
         widest = int(self.count.max(initial=1))
         self.cents = np.zeros((len(options), widest, _DEGREES))
@@ -111,7 +108,8 @@ class Chooser:
         np.add.at(every, layout.chord, sung)
         accompanied = (layout.quarters * layout.accompanied)[layout.cell_slice]
         np.add.at(beside, layout.chord, np.where(self.tone, layout.per_piece(accompanied), 0.0))
-        anchor = weights.anchor * np.where(self.home, weights.tonic, 1.0)
+        ground = self.ground
+        anchor = ground.anchor * np.where(self.home, ground.tonic_pull, 1.0)
         pull = (anchor * np.maximum(length, every / CHOIR))[:, None] * _away(self.places) ** 2
         pull += (weights.fixed * beside)[:, None] * _away(self.fixed) ** 2
         wolf = weights.chord * weights.wolf * length
@@ -123,7 +121,8 @@ class Chooser:
         found = []
         for chord, choices in enumerate(self.options):
             heard = frozenset(sounding[chord])
-            impure = [wolf[chord] * wolves(one, heard, self.limit) for one in choices]
+            limit = int(ground.limit[chord])
+            impure = [wolf[chord] * wolves(one, heard, limit) for one in choices]
             exceptional = [_EXCEPTION * is_exception(one, choices[0]) for one in choices]
             badness = np.array(impure or [0.0]) + np.array(exceptional or [0.0])
             found.append(pull[chord][None, :] + badness[:, None])
@@ -151,16 +150,17 @@ class Chooser:
             just = self.cents[before + 1, other, layout.degree[right[link]]] - own
             change = just[:, None] + _CHANGES[None, :]
             distance = (layout.key[right] - layout.key[left])[link]
-            costs = cost(weight[start + link, None], change, distance)
+            cap = self.ground.cap[layout.chord[right]][link]
+            costs = cost(weight[start + link, None], change, distance, cap)
             np.add.at(total, self.first_pair[before] + number, costs)
         return total
 
-    def _held(self, weight: Floats, change: Floats, distance: Ints) -> Floats:
-        beyond = np.maximum(np.abs(change) - self.cap, 0.0)
+    def _held(self, weight: Floats, change: Floats, distance: Ints, cap: Floats) -> Floats:
+        beyond = np.maximum(np.abs(change) - cap[:, None], 0.0)
         costs: Floats = weight * change**2 + _STEEP * beyond**2
         return costs
 
-    def _stepped(self, weight: Floats, change: Floats, distance: Ints) -> Floats:
+    def _stepped(self, weight: Floats, change: Floats, distance: Ints, cap: Floats) -> Floats:
         """Squared distance from the nearest just step; from the same pitch for repeated notes."""
         rising = np.where(distance < 0, -1.0, 1.0)
         sizes = rising[:, None] * steps(self.limit)[np.abs(distance) % 12]
@@ -173,9 +173,9 @@ class Chooser:
         if not self.options:
             return Choice((), np.zeros(0))
         own = self._own_costs()
-        layout, weights, lead = self.layout, self.weights, self.lead
-        links = self._link_costs(layout.held, self._held, held_weights(layout, weights, lead))
-        melodic = melodic_weights(layout, weights, lead)
+        layout, ground = self.layout, self.ground
+        links = self._link_costs(layout.held, self._held, held_weights(layout, ground))
+        melodic = melodic_weights(layout, ground)
         links += self._link_costs(layout.melodic, self._stepped, melodic)
         expected = np.diff(self.places)
         best, back = own[0], []

@@ -15,7 +15,16 @@ import numpy as np
 from retune.harmony.model import Harmony
 from retune.pitch import PitchClass
 from retune.score.model import Score
-from retune.tuning.intervals import CONSONANT, Floats, consonances, nearest, nearest_directed, steps
+from retune.tuning.ground import Ground
+from retune.tuning.intervals import (
+    CONSONANT,
+    Floats,
+    consonances,
+    each_within,
+    nearest,
+    nearest_directed,
+    steps,
+)
 from retune.tuning.layout import Layout
 from retune.tuning.rows import sounding_pairs
 from retune.tuning.targets import Targets
@@ -59,15 +68,15 @@ def all_figures(
     layout: Layout,
     targets: Targets,
     x: Floats,
-    limit: int,
+    ground: Ground,
     tonic: PitchClass,
     roots: tuple[float | None, ...],
 ) -> dict[str, dict[str, Any]]:
     """Purity, held shift, melody and drift, as the note list holds them."""
     return {
-        "purity": _rounded(purity(layout, targets, x, limit)),
+        "purity": _rounded(purity(layout, targets, x, ground)),
         "held_shift": _rounded(held_shift(score, harmony, layout, x)),
-        "melody": _rounded(melody(layout, x, limit)),
+        "melody": _rounded(melody(layout, x, ground)),
         "drift": _rounded(drift(score, harmony, tonic, roots)),
     }
 
@@ -80,20 +89,22 @@ def _rounded(figures: dict[str, Any]) -> dict[str, Any]:
     }
 
 
-def purity(layout: Layout, targets: Targets, x: Floats, limit: int) -> dict[str, float]:
+def purity(layout: Layout, targets: Targets, x: Floats, ground: Ground) -> dict[str, float]:
     """How far consonant pairs of the voices lie from pure, beside equal temperament.
 
     Triads are pairs of chord tones in major and minor triads.
     """
-    table = consonances(limit)
+    limits = ground.limit[layout.chord]
     pairs, triads, equal, equal_triads = _Spread(), _Spread(), _Spread(), _Spread()
     for left, right, quarters in sounding_pairs(layout):
         apart = (layout.key[right] - layout.key[left]) % 12
         used = CONSONANT[apart]
         left, right, apart, weight = left[used], right[used], apart[used], quarters[used]
         cents = x[right] - x[left]
-        missed = np.abs(cents - nearest(table, apart, cents))
-        level = np.abs(nearest(table, apart, np.zeros(len(apart))))
+        limit = limits[right]
+        missed = np.abs(cents - each_within(consonances, limit, nearest, apart, cents))
+        zeros = np.zeros(len(apart))
+        level = np.abs(each_within(consonances, limit, nearest, apart, zeros))
         both = targets.triad[left] & targets.triad[right]
         inside = targets.tone[left] & targets.tone[right] & both
         for every, triad, values in ((pairs, triads, missed), (equal, equal_triads, level)):
@@ -129,14 +140,16 @@ def held_shift(score: Score, harmony: Harmony, layout: Layout, x: Floats) -> dic
     }
 
 
-def melody(layout: Layout, x: Floats, limit: int) -> dict[str, Any]:
+def melody(layout: Layout, x: Floats, ground: Ground) -> dict[str, Any]:
     """How far the voices' steps and leaps lie from just ones, and repeated notes from equal."""
     links = layout.melodic[layout.tuned[layout.melodic[:, 0]]]
     left, right = links.T
     apart = layout.key[right] - layout.key[left]
     cents = x[right] - x[left]
     again = apart == 0
-    missed = np.abs(cents - nearest_directed(steps(limit), apart, cents))[~again]
+    limit = ground.limit[layout.chord[right]]
+    size = each_within(steps, limit, nearest_directed, apart, cents)
+    missed = np.abs(cents - size)[~again]
     repeated = np.abs(cents[again])
     return {
         "mean_cents": float(missed.mean()) if len(missed) else 0.0,

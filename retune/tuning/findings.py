@@ -27,13 +27,13 @@ def findings(
     options: Options,
     chosen: Sequence[Template | None],
     x: Floats,
-    cap: float,
+    caps: Floats,
 ) -> tuple[Finding, ...]:
     """All findings of a just tuning, in the order of the kinds above."""
     return (
         *_exceptions(score, harmony, layout, options, chosen),
         *_tempered(score, harmony, chosen),
-        *_bound(score, harmony, layout, x, cap),
+        *_bound(score, harmony, layout, x, caps),
     )
 
 
@@ -95,15 +95,15 @@ def _tempered(
 
 
 def _bound(
-    score: Score, harmony: Harmony, layout: Layout, x: Floats, cap: float
+    score: Score, harmony: Harmony, layout: Layout, x: Floats, caps: Floats
 ) -> Iterator[Finding]:
-    """Held notes that move as far as they may."""
-    if cap == 0.0:
-        return
-    links = layout.held[layout.tuned[layout.held[:, 0]]]
+    """Held notes that move as far as they may; `caps` holds a value for each held link."""
+    may = layout.tuned[layout.held[:, 0]] & (caps > 0.0)
+    links, caps = layout.held[may], caps[may]
     moved = np.abs(x[links[:, 1]] - x[links[:, 0]])
-    full = links[moved >= cap - _AT_BOUND]
-    if len(full):
+    at = moved >= caps - _AT_BOUND
+    for cap in np.unique(caps[at]).tolist():
+        full = links[at & (caps == cap)]
         chords = [harmony.chords[int(layout.chord[piece])] for piece in full[:, 1]]
         chords.sort(key=lambda chord: chord.index)
         yield Finding(

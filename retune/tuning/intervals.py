@@ -9,6 +9,7 @@ Conventions
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from fractions import Fraction
 from functools import cache
 
@@ -98,4 +99,28 @@ def nearest_directed(table: Floats, distance: Ints, cents: Floats) -> Floats:
     """As `nearest`, for signed distances in semitones and the change that goes with them."""
     rising = np.where(distance < 0, -1.0, 1.0)
     found: Floats = rising * nearest(table, np.abs(distance) % 12, rising * cents)
+    return found
+
+
+def each_within(
+    table: Callable[[int], Floats],
+    limits: Ints,
+    search: Callable[[Floats, Ints, Floats], Floats],
+    semitones: Ints,
+    cents: Floats,
+) -> Floats:
+    """`nearest` or `nearest_directed` where every interval has a prime limit of its own.
+
+    Parameters
+    ----------
+    table : callable
+        `consonances` or `steps`.
+    limits : ndarray of int, shape (n,)
+    """
+    if len(limits) == 0 or limits.min() == limits.max():
+        return search(table(int(limits[0]) if len(limits) else 5), semitones, cents)
+    found = np.zeros(len(limits))
+    for limit in np.unique(limits).tolist():
+        own = limits == limit
+        found[own] = search(table(limit), semitones[own], cents[own])
     return found

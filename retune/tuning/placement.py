@@ -13,10 +13,10 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from retune.tuning.ground import Ground
 from retune.tuning.intervals import Floats, Ints
 from retune.tuning.layout import Layout
-from retune.tuning.policies import WEIGHTS, Weights
-from retune.tuning.policy import Drift, Policy, Pull
+from retune.tuning.policy import Policy, Pull
 from retune.tuning.rows import (
     absolute,
     anchor_weights,
@@ -44,22 +44,21 @@ class Problem:
         Where the search for the nearest just steps begins, in cents.
     fixed, fixed_root : ndarray, shape (pieces,)
         Each piece's cents, and its chord's root's, in the tuning of the parts that cannot move.
-    lead : int or None
-        Index of the part kept smoothest.
     """
 
     layout: Layout
     targets: Targets
     policy: Policy
+    ground: Ground
     start: Floats
     fixed: Floats
     fixed_root: Floats
-    lead: int | None = None
 
     @property
-    def weights(self) -> Weights:
-        """The weights of the drift policy."""
-        return WEIGHTS[self.policy.drift]
+    def cap(self) -> Floats:
+        """The most that each held link may move, in cents: what its later chord allows."""
+        caps: Floats = self.ground.cap[self.layout.chord[self.layout.held[:, 1]]]
+        return caps
 
 
 def _reach(layout: Layout, unknown: Ints, links: Ints) -> int:
@@ -76,7 +75,7 @@ def _reach(layout: Layout, unknown: Ints, links: Ints) -> int:
 
 def _fixed_rows(problem: Problem, unknown: Ints) -> Rows:
     """Voices drawn to the parts that cannot move, where these sound."""
-    layout, targets, weights = problem.layout, problem.targets, problem.weights
+    layout, targets, weights = problem.layout, problem.targets, problem.ground.weights
     with_them = layout.quarters * layout.accompanied
     weight = layout.per_piece(with_them[layout.cell_slice]) * weights.fixed
     target = problem.fixed.copy()
@@ -93,64 +92,69 @@ def _fixed_rows(problem: Problem, unknown: Ints) -> Rows:
     return absolute(unknown[chosen], weight[chosen], target[chosen])
 
 
-def _constant_rows(problem: Problem, unknown: Ints, steady: bool) -> Iterator[Rows]:
+def _constant_rows(problem: Problem, unknown: Ints) -> Iterator[Rows]:
     """All rows that do not change from pass to pass, but for the targets of steps."""
-    layout, targets, weights = problem.layout, problem.targets, problem.weights
-    for left, right, weight, target in chord_rows(
-        layout, targets, weights, problem.policy.prime_limit
-    ):
+    layout, targets, ground = problem.layout, problem.targets, problem.ground
+    for left, right, weight, target in chord_rows(layout, targets, ground):
         used = weight > 0.0
         yield Rows(unknown[left[used]], unknown[right[used]], weight[used], target[used])
-    anchor = anchor_weights(layout, targets, weights)
+    anchor = anchor_weights(layout, targets, ground)
     sung = np.flatnonzero(layout.tuned)
     yield absolute(unknown[sung], anchor[sung], targets.place[sung])
     yield _fixed_rows(problem, unknown)
-    if problem.policy.drift is Drift.WITHIN:
+    if ground.within.any():
         # The bound is measured from home; so that the first tonic chord is home, it stands there.
         home = _home(problem)
         first = home[layout.chord[home] == layout.chord[home[:1]]]
-        yield absolute(unknown[first], np.full(len(first), STIFF), targets.just[first])
-    jump = bridges(layout)
+        place = targets.just[first] + targets.level[first]
+        yield absolute(unknown[first], np.full(len(first), STIFF), place)
+    jump = bridges(layout, ground)
     step = targets.place[jump[:, 1]] - targets.place[jump[:, 0]]
-    yield between(unknown[jump], np.full(len(jump), weights.bridge), step)
+    yield between(unknown[jump], np.full(len(jump), ground.weights.bridge), step)
     held = layout.tuned[layout.held[:, 0]]
-    weight = np.where(steady, STIFF, held_weights(layout, weights, problem.lead))
+    weight = np.where(problem.cap == 0.0, STIFF, held_weights(layout, ground))
     links = unknown[layout.held[held]]
     yield between(links, weight[held], np.zeros(held.sum()))
 
 
 def _home(problem: Problem) -> Ints:
-    """The voices' chord tones, and any tonic they sing alone, in chords on the home tonic."""
+    """The voices' chord tones, and any tonic they sing alone, in chords on the home tonic that
+    are bound to a range."""
     layout, targets = problem.layout, problem.targets
-    return np.flatnonzero(targets.home & layout.tuned & (targets.tone | (layout.degree == 0)))
+    bound = targets.home & layout.tuned & problem.ground.within[layout.chord]
+    return np.flatnonzero(bound & (targets.tone | (layout.degree == 0)))
 
 
 def _bounds(problem: Problem, unknown: Ints) -> list[Bounds]:
     """The cap on held shifts, and the bound on the home tonic."""
     layout, targets, policy = problem.layout, problem.targets, problem.policy
     found = []
-    if 0.0 < policy.held_shift < math.inf:
-        held = unknown[layout.held[layout.tuned[layout.held[:, 0]]]]
+    some = layout.tuned[layout.held[:, 0]] & (problem.cap > 0.0) & (problem.cap < math.inf)
+    if some.any():
+        held = unknown[layout.held[some]]
         zeros = np.zeros(len(held))
-        found.append(Bounds(between(held, zeros + STIFF, zeros), zeros + policy.held_shift))
-    if policy.drift is Drift.WITHIN:
+        found.append(Bounds(between(held, zeros + STIFF, zeros), problem.cap[some]))
+    if problem.ground.within.any():
         home = _home(problem)
         stiff = np.full(len(home), STIFF)
-        rows = absolute(unknown[home], stiff, targets.just[home])
+        rows = absolute(unknown[home], stiff, targets.just[home] + targets.level[home])
         found.append(Bounds(rows, np.full(len(home), policy.drift_within)))
     return found
 
 
-def capped(layout: Layout, x: Floats, cap: float) -> Floats:
-    """Pieces moved, where the solve left them over the cap, until every held shift keeps it."""
+def capped(layout: Layout, x: Floats, caps: Floats) -> Floats:
+    """Pieces moved, where the solve left them over the cap, until every held shift keeps it.
+
+    `caps` has one value for each held link.
+    """
     x = x.copy()
-    if cap == 0.0:
+    if not caps.any():
         length = layout.length
         total = np.bincount(layout.note, length)
         mean = np.bincount(layout.note, length * x) / np.maximum(total, 1e-300)
         return mean[layout.note]
     left, right = layout.held.T
-    for before, after in zip(left.tolist(), right.tolist(), strict=True):
+    for before, after, cap in zip(left.tolist(), right.tolist(), caps.tolist(), strict=True):
         if abs(x[after] - x[before]) > cap:
             x[after] = min(max(x[after], x[before] - cap), x[before] + cap)
     return x
@@ -158,28 +162,28 @@ def capped(layout: Layout, x: Floats, cap: float) -> Floats:
 
 def place(problem: Problem) -> Floats:
     """The tuned cents of every piece, shape (pieces,)."""
-    layout, policy = problem.layout, problem.policy
+    layout, ground = problem.layout, problem.ground
     x = np.where(layout.tuned, problem.start, problem.fixed)
     if not layout.tuned.any():
         return x
     unknown = np.cumsum(layout.tuned) - 1
     sung = np.flatnonzero(layout.tuned)
     melodic = layout.tuned[layout.melodic[:, 0]]
-    links = np.concatenate((layout.held, layout.melodic, bridges(layout)))
+    links = np.concatenate((layout.held, layout.melodic, bridges(layout, ground)))
     links = links[layout.tuned[links[:, 0]]]
     block = max(SMALLEST_BLOCK, _reach(layout, unknown, links))
     base = Normal(len(sung), block)
-    for rows in _constant_rows(problem, unknown, policy.held_shift == 0.0):
+    for rows in _constant_rows(problem, unknown):
         base.add(rows)
     step_links = unknown[layout.melodic[melodic]]
-    step_weights = melodic_weights(layout, problem.weights, problem.lead)[melodic]
+    step_weights = melodic_weights(layout, ground)[melodic]
     bounds = _bounds(problem, unknown)
     found = x[sung]
     for _ in range(_PASSES):
-        targets = melodic_targets(layout, x, policy.prime_limit)[melodic]
+        targets = melodic_targets(layout, x, ground)[melodic]
         system = base.copy()
         system.add(between(step_links, step_weights, targets))
         found = minimise(system, bounds, found)
         x[sung] = found
-    x[sung] = capped(layout, x, policy.held_shift)[sung]
+    x[sung] = capped(layout, x, problem.cap)[sung]
     return x

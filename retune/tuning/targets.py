@@ -10,14 +10,16 @@ Conventions
 from __future__ import annotations
 
 from dataclasses import dataclass
+from fractions import Fraction
 
 import numpy as np
 
 from retune.harmony.model import Harmony, Quality
-from retune.pitch import PitchClass
+from retune.tuning.ground import Ground
 from retune.tuning.intervals import Flags, Floats
 from retune.tuning.layout import Layout
 from retune.tuning.ratios import DEGREES, Template, scale_cents
+from retune.units import largest_prime, ratio_to_cents
 
 TRIAD_TONES = 3
 _TRIADS = (Quality.MAJOR, Quality.MINOR)
@@ -39,7 +41,11 @@ class Targets:
         Chord tones whose ratio holds the prime 7.
     triad, home : ndarray of bool, shape (pieces,)
         Whether the piece's chord is a major or minor triad and the piece is no tone added to it;
-        whether its root is the home tonic.
+        whether its root is the tonic in force.
+    level : ndarray, shape (pieces,)
+        Where that tonic stands, in cents.
+    decided : ndarray of bool, shape (pieces,)
+        Pieces whose ratio the director gave.
     """
 
     templates: tuple[Template | None, ...]
@@ -50,6 +56,8 @@ class Targets:
     septimal: Flags
     triad: Flags
     home: Flags
+    level: Floats
+    decided: Flags
 
 
 def _chord_places(
@@ -67,8 +75,7 @@ def aim(
     layout: Layout,
     harmony: Harmony,
     templates: tuple[Template | None, ...],
-    tonic: PitchClass,
-    limit: int,
+    ground: Ground,
 ) -> Targets:
     """The targets of every piece.
 
@@ -76,10 +83,8 @@ def aim(
     ----------
     templates : tuple
         The template chosen for each chord; None where nothing sounds.
-    tonic : PitchClass
-        The home tonic, at 0 cents.
-    limit : int
-        The prime limit in force.
+    ground : Ground
+        Tonics, limits and the director's ratios.
     """
     cents = np.zeros((len(harmony.chords), len(DEGREES) + 1))
     septimal = np.zeros(cents.shape, dtype=bool)
@@ -89,18 +94,48 @@ def aim(
             septimal[index, : len(template.cents)] = template.septimal
     just = cents[layout.chord, layout.degree]
     tone = (layout.degree >= 0) & ~layout.lone
-    spread = {fifths: scale_cents(fifths, limit) for fifths in range(-60, 61)}
-    own = np.array([spread[int(f)] for f in np.clip(layout.fifths - tonic.fifths, -60, 60)])
+    own = _in_scale(layout, ground)
+    natural = septimal[layout.chord, layout.degree]
+    decided = np.zeros(len(layout.note), dtype=bool)
+    for piece, ratio in ground.ratios.items():
+        if not layout.lone[piece]:
+            just[piece] = above_root(layout, harmony, piece, ratio)
+            decided[piece] = tone[piece] = True
+            natural[piece] = largest_prime(ratio) == 7
     roots = _chord_places(layout, harmony, just, own, tone)
     triad = np.array([chord.quality in _TRIADS for chord in harmony.chords], dtype=bool)
-    home = np.array([chord.root == tonic for chord in harmony.chords], dtype=bool)
+    home = ground.at_home(harmony)
     return Targets(
         templates=templates,
         roots=roots,
         just=np.where(tone, just, 0.0),
         place=np.where(tone, just + roots[layout.chord], own),
         tone=tone,
-        septimal=tone & septimal[layout.chord, layout.degree],
+        septimal=tone & natural,
         triad=triad[layout.chord] & (layout.degree < TRIAD_TONES),
         home=home[layout.chord],
+        level=ground.level[layout.chord],
+        decided=decided,
     )
+
+
+def _in_scale(layout: Layout, ground: Ground) -> Floats:
+    """Each piece's place in the just scale on the tonic in force, in cents."""
+    spread = {
+        limit: np.array([scale_cents(fifths, limit) for fifths in range(-60, 61)])
+        for limit in np.unique(ground.limit).tolist()
+    }
+    above = np.clip(layout.fifths - ground.tonic[layout.chord], -60, 60) + 60
+    limits = ground.limit[layout.chord]
+    own = np.zeros(len(layout.note))
+    for limit, scale in spread.items():
+        chosen = limits == limit
+        own[chosen] = scale[above[chosen]]
+    return own + ground.level[layout.chord]
+
+
+def above_root(layout: Layout, harmony: Harmony, piece: int, ratio: Fraction) -> float:
+    """A ratio's distance from a piece's tempered one above its root, in cents; -600 to 600."""
+    root = harmony.chords[int(layout.chord[piece])].root
+    steps = (int(layout.key[piece]) - (root.chroma if root is not None else 0)) % 12
+    return (ratio_to_cents(ratio) - 100.0 * steps + 600.0) % 1200.0 - 600.0

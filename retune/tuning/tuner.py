@@ -4,27 +4,30 @@ from __future__ import annotations
 
 import numpy as np
 
+from retune.choices import NO_CHOICES, Choices
 from retune.errors import Finding, WishError
 from retune.harmony.model import Harmony
 from retune.pitch import PitchClass
 from retune.score.model import Score
 from retune.tuning import figures
-from retune.tuning.alternatives import options_of, preferred
+from retune.tuning.alternatives import options_of, preferred, that_agree
 from retune.tuning.assemble import Assembler, root_cents
 from retune.tuning.choose import Chooser
 from retune.tuning.findings import findings
 from retune.tuning.fixed import CentsOf, accompaniment, temperament
+from retune.tuning.ground import make_ground
 from retune.tuning.intervals import Floats
 from retune.tuning.layout import Layout, lay_out
 from retune.tuning.model import TunedScore
 from retune.tuning.placement import Problem, place
-from retune.tuning.policies import WEIGHTS
 from retune.tuning.policy import Policy
 from retune.tuning.ratios import scale_cents
 from retune.tuning.targets import aim
 
 
-def tune(score: Score, harmony: Harmony, policy: Policy) -> TunedScore:
+def tune(
+    score: Score, harmony: Harmony, policy: Policy, choices: Choices = NO_CHOICES
+) -> TunedScore:
     """Give every note its tuned pitch.
 
     Parameters
@@ -33,6 +36,8 @@ def tune(score: Score, harmony: Harmony, policy: Policy) -> TunedScore:
     harmony : Harmony
         The analysis of that score.
     policy : Policy
+    choices : Choices, optional
+        The director's decisions; in a temperament they bear on nothing but the roots.
 
     Raises
     ------
@@ -42,40 +47,39 @@ def tune(score: Score, harmony: Harmony, policy: Policy) -> TunedScore:
     lead = _lead(score, policy.melody)
     tonic = policy.tonic or harmony.tonic.root
     layout = lay_out(score, harmony)
-    limit = policy.prime_limit
-    options = options_of(score, harmony, limit)
-    targets = aim(layout, harmony, preferred(options), tonic, limit)
+    ground = make_ground(score, harmony, layout, policy, tonic, lead, choices)
+    options = options_of(score, harmony, ground.limit.tolist())
+    options = that_agree(options, layout, ground.ratios)
+    targets = aim(layout, harmony, preferred(options), ground)
     tempered = temperament(policy.temperament, tonic)
     unmoving = accompaniment(policy.accompaniment_tuning, tonic)
 
     found: tuple[Finding, ...] = ()
     fixed = _piece_cents(score, layout, unmoving)
     if tempered is None:
-        home = np.array([chord.root == tonic for chord in harmony.chords], dtype=bool)
-        weights, cap = WEIGHTS[policy.drift], policy.held_shift
+        home = ground.at_home(harmony)
         root = np.array([unmoving(c.root) if c.root else 0.0 for c in harmony.chords])
-        choice = Chooser(
-            layout, options, targets.roots, home, root, weights, limit, cap, lead
-        ).search()
-        targets = aim(layout, harmony, choice.templates, tonic, limit)
+        choice = Chooser(layout, options, targets.roots, home, root, ground).search()
+        targets = aim(layout, harmony, choice.templates, ground)
         start = targets.place + (choice.roots - targets.roots)[layout.chord]
-        x = place(Problem(layout, targets, policy, start, fixed, root[layout.chord], lead))
-        found = findings(score, harmony, layout, options, choice.templates, x, cap)
-        scale = _home_scale(tonic, limit)
+        problem = Problem(layout, targets, policy, ground, start, fixed, root[layout.chord])
+        x = place(problem)
+        found = findings(score, harmony, layout, options, choice.templates, x, problem.cap)
+        scale = _home_scale(tonic, policy.prime_limit)
         roots = root_cents(layout, harmony, targets, x, scale)
     else:
         x = np.where(layout.tuned, _piece_cents(score, layout, tempered), fixed)
         scale = tempered
         roots = tuple(tempered(c.root) if c.root else None for c in harmony.chords)
     just = tempered is None
-    assembler = Assembler(score, harmony, layout, targets, x, roots, limit, just)
+    assembler = Assembler(score, harmony, layout, targets, x, roots, ground, just)
     return TunedScore(
         score=score,
         harmony=harmony,
         policy=policy,
         notes=assembler.notes(scale, unmoving),
         root_cents=roots,
-        figures=figures.all_figures(score, harmony, layout, targets, x, limit, tonic, roots),
+        figures=figures.all_figures(score, harmony, layout, targets, x, ground, tonic, roots),
         findings=found,
     )
 
