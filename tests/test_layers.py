@@ -46,6 +46,7 @@ DOORS = {
     "fluidsynth": {"adapters"},
     "verovio": {"adapters"},
     "typst": {"adapters"},
+    "matplotlib": {"adapters"},
     "watchfiles": {"adapters"},
 }
 

@@ -28,6 +28,7 @@ COMMANDS = {
     "watch": "retune.cli.watch",
     "play": "retune.cli.play",
     "ports": "retune.cli.ports",
+    "chord": "retune.cli.chord",
     "exporters": "retune.cli.exporters",
 }
 """Where each command lives; a module is imported only when its command is needed."""

@@ -19,11 +19,11 @@ from retune.chordcard.others import (
 )
 from retune.chordcard.vowels import DARKER, minor_third_rub, shared_by_voice
 from retune.page.intervals import interval_name
-from retune.units import ratio_to_cents
 from retune.voice.beats import Pair
 from retune.voice.partials import HIGHEST_HZ, ordinal
 
 _PAIRS = 12
+_INTERVAL = 26
 _BEATS = 3
 _CLOSE_DB = 3.0
 
@@ -33,9 +33,9 @@ def chord_lines(chord: FoundChord, columns: int) -> Iterator[str]:
     yield from _heading(chord, columns)
     yield ""
     yield from _tones(chord)
-    if len(chord.tones) == 1:
+    if len({tone.pitch.key for tone in chord.tones}) == 1:
         yield ""
-        yield from _alone(chord.tones[0], columns)
+        yield from _alone(chord, columns)
         return
     yield ""
     yield from _pairs(chord, columns)
@@ -53,30 +53,43 @@ def title(chord: FoundChord) -> str:
     reading = chord.reading
     if reading.quality is not None:
         words = f"{reading.root} {reading.quality}"
-        return f"{reading.symbol}, {words}" if reading.symbol != words else words
-    return _interval(chord) or "no chord with a name"
+        if reading.added:
+            words += f" with {' and '.join(reading.added)}"
+        return words if reading.symbol == reading.root.name else f"{reading.symbol}, {words}"
+    return _interval(chord)
+
+
+def full_title(chord: FoundChord) -> str:
+    """What a chord is called, and its pitches."""
+    names = " ".join(pitch.name for pitch in chord.pitches)
+    named = chord.reading.quality is not None or len(chord.tones) <= _TWO
+    place = f"{chord.place}: " if chord.place else ""
+    return f"{place}{title(chord)}: {names}" if named else f"{place}{names}"
+
+
+_TWO = 2
 
 
 def _interval(chord: FoundChord) -> str:
     keys = [tone.pitch.key for tone in chord.tones]
     if len(keys) == 1:
         return "one tone"
-    if len(keys) == 2:
+    if len(keys) == _TWO:
         return interval_name(keys[1] - keys[0]) if keys[1] > keys[0] else "unison"
     return ""
 
 
 def _heading(chord: FoundChord, columns: int) -> Iterator[str]:
-    names = " ".join(pitch.name for pitch in chord.pitches)
-    place = f"{chord.place}: " if chord.place else ""
-    yield from _styled(f"{place}{title(chord)}: {names}", columns)
+    for line in textwrap.wrap(full_title(chord), columns - 1):
+        yield click.style(line, bold=True)
     words = [f"A4 = {chord.tones[0].reference_hz:g} Hz", f"{chord.limit}-limit"]
     numbers = proportion([tone.sounding for tone in chord.tones])
     if numbers is not None and len(numbers) > 1:
         words.insert(0, f"in whole numbers {':'.join(map(str, numbers))}")
     if abs(chord.root_cents) >= 0.05:
         words.append(f"its root {_signed(chord.root_cents)} cents from the piano's")
-    if len(chord.tones) > 1 and chord.reading.quality is None:
+    if len(chord.tones) > _TWO and chord.reading.quality is None:
+        words.append("no chord with a name")
         words.append(f"ratios are above {chord.reading.root}, the simplest of their spelling")
     yield from textwrap.wrap(", ".join(words), columns - 1)
     if chord.rivals:
@@ -88,9 +101,9 @@ def _heading(chord: FoundChord, columns: int) -> Iterator[str]:
         yield from textwrap.wrap(f"{known} {others}.", columns - 1)
 
 
-def _styled(text: str, columns: int) -> Iterator[str]:
-    for line in textwrap.wrap(text, columns - 1):
-        yield click.style(line, bold=True)
+def _here(chord: FoundChord) -> str:
+    """What the chord's own tuning is called: in a score it need not be just."""
+    return "here" if chord.place else "just"
 
 
 def _signed(cents: float) -> str:
@@ -103,7 +116,7 @@ def _tones(chord: FoundChord) -> Iterator[str]:
     off_piano = abs(chord.root_cents) >= 0.05
     above = "above root  " if off_piano else ""
     yield _head(
-        f" {'voice':<{width}}  pitch  ratio        {above}cents    just Hz   equal Hz"
+        f" {'voice':<{width}}  pitch  ratio        {above}cents    {_here(chord):>4} Hz   equal Hz"
     )
     for tone in reversed(chord.tones):
         ratio = tone.role or "tempered"
@@ -135,29 +148,38 @@ def _head(text: str) -> str:
     return click.style(text.rstrip(), bold=True)
 
 
-def _alone(tone: Tone, columns: int) -> Iterator[str]:
+def _alone(chord: FoundChord, columns: int) -> Iterator[str]:
+    tone = chord.tones[0]
     partials = ", ".join(f"{number * tone.hz:.0f}" for number in range(1, 9))
-    yield from textwrap.wrap(
-        f"One tone beats with nothing. Its first partials lie at {partials} Hz.", columns - 1
-    )
+    if len(chord.tones) == 1:
+        yield from _indented("One tone beats with nothing.", columns)
+    yield from _unisons(chord, columns)
+    yield from _indented(f"Its first partials lie at {partials} Hz.", columns)
 
 
 def _pairs(chord: FoundChord, columns: int) -> Iterator[str]:
     card = chord.card
-    if card.pairs:
-        yield _head(
-            f" {'pair':<9} {'interval':<26} {'equal':>6} {'just':>6}  partials that meet, Hz"
-        )
-    for pair in card.pairs[:_PAIRS]:
+    shown = card.pairs[:_PAIRS]
+    names = [_pair_words(chord, pair) for pair in shown]
+    room = max([_INTERVAL, *map(len, names)])
+    if shown:
+        rates = f"{'equal':>6} {_here(chord):>6}"
+        yield _head(f" {'pair':<9} {'interval':<{room}} {rates}  partials that meet, Hz")
+    for pair, name in zip(shown, names, strict=True):
         low, high = chord.tones[pair.low].pitch, chord.tones[pair.high].pitch
-        name = f"{interval_name(high.key - low.key)} {pair.ratio.numerator}:{pair.ratio.denominator}"
-        left = f" {f'{low} {high}':<9} {name:<26} {_beat(pair.equal_hz):>6} {_beat(pair.beat_hz):>6}"
+        rates = f"{_beat(pair.equal_hz):>6} {_beat(pair.beat_hz):>6}"
+        left = f" {f'{low} {high}':<9} {name:<{room}} {rates}"
         yield f"{left}  {_meeting(pair, columns - len(left) - 3)}"
-    if card.pairs:
+    if shown:
         yield from _indented("Beats a second; 0 is still.", columns)
-    left_out = _count_pairs(chord) - len(card.pairs[:_PAIRS])
+    left_out = _count_pairs(chord) - len(shown)
     if left_out:
-        yield from _indented(f"Not listed: {left_out} that share no low partial.", columns)
+        one = left_out == 1
+        yield from _indented(
+            f"Not listed: {left_out} pair{'' if one else 's'} that share{'s' * one} no low partial"
+            f"{', or a higher one' * (len(shown) < len(card.pairs))}.",
+            columns,
+        )
     yield from _unisons(chord, columns)
     if len(chord.tones) < 3:
         return
@@ -174,16 +196,21 @@ def _pairs(chord: FoundChord, columns: int) -> Iterator[str]:
     yield from _indented(why, columns)
 
 
+def _pair_words(chord: FoundChord, pair: Pair) -> str:
+    size = chord.tones[pair.high].pitch.key - chord.tones[pair.low].pitch.key
+    return f"{interval_name(size)} {pair.ratio.numerator}:{pair.ratio.denominator}"
+
+
 def _count_pairs(chord: FoundChord) -> int:
     keys = [tone.pitch.key for tone in chord.tones]
-    return sum(
-        low != high for place, low in enumerate(keys) for high in keys[place + 1 :]
-    )
+    return sum(low != high for place, low in enumerate(keys) for high in keys[place + 1 :])
 
 
 def _unisons(chord: FoundChord, columns: int) -> Iterator[str]:
     keys = [tone.pitch.key for tone in chord.tones]
-    for tone in {tone.pitch.key: tone for tone in chord.tones if keys.count(tone.pitch.key) > 1}.values():
+    for tone in {
+        tone.pitch.key: tone for tone in chord.tones if keys.count(tone.pitch.key) > 1
+    }.values():
         rate = tone.hz * (2.0 ** (1.0 / 1200.0) - 1.0)
         yield from _indented(
             f"{tone.pitch} is sung in unison: each cent between the singers beats {rate:.2f} "
@@ -210,7 +237,9 @@ def _indented(text: str, columns: int) -> Iterator[str]:
 def _roughness(chord: FoundChord, columns: int) -> Iterator[str]:
     here, equal = sound_here(chord).roughness, sound_equal(chord).roughness
     share = here / equal - 1.0 if equal else 0.0
-    less = f"{abs(share):.0%} {'less' if share < 0 else 'more'}" if abs(share) >= 0.005 else "as much"
+    less = (
+        f"{abs(share):.0%} {'less' if share < 0 else 'more'}" if abs(share) >= 0.005 else "as much"
+    )
     yield from _indented(
         f"Roughness: {equal:.2f} in equal temperament, {here:.2f} here, {less} (Plomp and "
         "Levelt's curve as Sethares 1993 fits it, six partials a tone; it compares tunings of "
@@ -229,11 +258,11 @@ def _vowels(chord: FoundChord, columns: int) -> Iterator[str]:
         best, worst = one.vowels[0], one.vowels[-1]
         strong = [v for v in one.vowels if best.level_db - v.level_db <= _CLOSE_DB]
         near = f"formant {best.formant} of {best.vowel} at {best.formant_hz:.0f} Hz"
+        also = "" if one.other_partial == 1 else f"the {ordinal(one.other_partial)} of "
         text = (
-            f"{tone.name} {tone.pitch}: the {ordinal(one.partial)} at {one.hz:.0f} Hz, which meets "
-            f"the {ordinal(one.other_partial)} of {other.pitch}, is strongest on "
-            f"{' or '.join(v.vowel for v in strong)} ({near}), "
-            f"{best.level_db - worst.level_db:.0f} dB weaker on {worst.vowel}."
+            f"{tone.name} {tone.pitch}: {ordinal(one.partial)} partial, {one.hz:.0f} Hz, which "
+            f"meets {also}{other.pitch}: strongest on {' or '.join(v.vowel for v in strong)} "
+            f"({near}), {best.level_db - worst.level_db:.0f} dB weaker on {worst.vowel}."
         )
         lines = textwrap.wrap(text, columns - 4)
         yield f" {lines[0]}"
@@ -306,7 +335,7 @@ def _inversions(chord: FoundChord, columns: int) -> Iterator[str]:
     if not found:
         return
     yield _head(
-        f" {'other basses':<23} {'whole numbers':<15} {'just':>6} {'equal':>6}  "
+        f" {'other basses':<23} {'whole numbers':<15} {_here(chord):>6} {'equal':>6}  "
         "beats a second, equal"
     )
     for one in found:

@@ -2,20 +2,16 @@
 
 from __future__ import annotations
 
-import math
-from fractions import Fraction
 from typing import Any
 
-from retune.harmony.model import Chord, Role
+from retune.chordcard.fromscore import card_of
+from retune.chordcard.model import ChordCard, Tone
+from retune.harmony.model import Chord
 from retune.harmony.symbols import chord_symbol, symbol_of
 from retune.page.intervals import interval_name
-from retune.score.model import VoiceType
-from retune.tuning.model import Segment, TunedNote, TunedScore
+from retune.tuning.model import TunedScore
 from retune.tuning.sounding import Row, sung_by_chord
-from retune.units import hz_of
-from retune.voice.beats import Pair, SoundingTone, pairs
-from retune.voice.partials import chord_partial
-from retune.voice.vowelhint import hint
+from retune.voice.beats import Pair
 
 _MOST_PAIRS = 8
 
@@ -38,10 +34,7 @@ def _card(tuned: TunedScore, chord: Chord, row: Row) -> dict[str, Any]:
     }
     if chord.root is None or chord.quality is None:
         return card
-    parts = sorted(row)
-    sung = [row[part] for part in parts]
-    tones = [_sounding(tuned, *one) for one in sung]
-    found = pairs(tones, tuned.policy.prime_limit)
+    parts, found = sorted(row), card_of(tuned, row)
     root = tuned.root_cents[chord.index] or 0.0
     card |= {
         "symbol": chord_symbol(chord),
@@ -50,43 +43,34 @@ def _card(tuned: TunedScore, chord: Chord, row: Row) -> dict[str, Any]:
         "doubt": chord.doubtful,
         "confidence": round(chord.confidence, 2),
         "rootCents": round(root, 3),
-        "tones": [_tone(tuned, note, segment, root) for note, segment in sung],
-        "pairs": [_pair(pair, sung) for pair in found[:_MOST_PAIRS]],
+        "tones": [_tone(part, one, root) for part, one in zip(parts, found.tones, strict=True)],
+        "pairs": [_pair(pair, found) for pair in found.pairs[:_MOST_PAIRS]],
     }
     if chord.runner_up is not None:
         card["other"] = symbol_of(*chord.runner_up)
-    if (whole := _whole(tones)) is not None:
-        card["whole"] = round(whole, 1)
-    voices = [_voice(tuned, part) for part in parts]
-    names = [tuned.score.parts[part].name for part in parts]
-    advice = hint([tone.hz for tone in tones], voices, found, names=names)
-    if advice is not None:
-        card["hint"] = advice.words
+    if found.whole is not None:
+        card["whole"] = round(found.whole.hz, 1)
+    if found.hint is not None:
+        card["hint"] = found.hint.words
     return card
 
 
-def _sounding(tuned: TunedScore, note: TunedNote, segment: Segment) -> SoundingTone:
-    equal = hz_of(note.note.pitch.key, 0.0, tuned.policy.reference_hz)
-    return SoundingTone(tuned.hz(note, segment), equal, segment.ratio)
-
-
-def _tone(tuned: TunedScore, note: TunedNote, segment: Segment, root: float) -> dict[str, Any]:
+def _tone(part: int, tone: Tone, root: float) -> dict[str, Any]:
     """`cents` are against equal temperament, `rel` those of the interval above the root."""
-    ratio = segment.ratio
     return {
-        "p": note.note.part,
-        "n": note.note.pitch.name,
-        "ratio": f"{ratio.numerator}:{ratio.denominator}" if ratio is not None else "",
-        "cents": round(segment.cents, 3),
-        "rel": round(segment.cents - root, 3),
-        "hz": round(tuned.hz(note, segment), 4),
-        "eq": round(hz_of(note.note.pitch.key, 0.0, tuned.policy.reference_hz), 4),
-        "role": "" if segment.role is Role.CHORD_TONE else str(segment.role),
+        "p": part,
+        "n": tone.pitch.name,
+        "ratio": f"{tone.ratio.numerator}:{tone.ratio.denominator}" if tone.ratio else "",
+        "cents": round(tone.cents, 3),
+        "rel": round(tone.cents - root, 3),
+        "hz": round(tone.hz, 4),
+        "eq": round(tone.equal_hz, 4),
+        "role": tone.role,
     }
 
 
-def _pair(pair: Pair, sung: list[tuple[TunedNote, Segment]]) -> dict[str, Any]:
-    low, high = sung[pair.low][0].note.pitch.key, sung[pair.high][0].note.pitch.key
+def _pair(pair: Pair, card: ChordCard) -> dict[str, Any]:
+    low, high = card.tones[pair.low].pitch.key, card.tones[pair.high].pitch.key
     return {
         "a": pair.low,
         "b": pair.high,
@@ -96,22 +80,3 @@ def _pair(pair: Pair, sung: list[tuple[TunedNote, Segment]]) -> dict[str, Any]:
         "equal": round(pair.equal_hz, 3),
         "shared": [[s.low_partial, s.high_partial, round(s.hz, 1)] for s in pair.shared],
     }
-
-
-def _whole(tones: list[SoundingTone]) -> float | None:
-    """The lowest partial that all tones of a chord share, in Hz."""
-    if len(tones) < 3:
-        return None
-    lowest = min(tones, key=lambda tone: tone.hz)
-    ratios = []
-    for tone in tones:
-        if tone.ratio is None or lowest.ratio is None:
-            return None
-        octaves = round(math.log2(tone.hz / lowest.hz / float(tone.ratio / lowest.ratio)))
-        ratios.append(tone.ratio / lowest.ratio * Fraction(2) ** octaves)
-    found = chord_partial(ratios, lowest.hz)
-    return None if found is None else found.hz
-
-
-def _voice(tuned: TunedScore, part: int) -> VoiceType | None:
-    return tuned.score.parts[part].voice_type

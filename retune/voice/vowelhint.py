@@ -163,8 +163,8 @@ def _meetings(
         low, high = voices[pair.low], voices[pair.high]
         if low is None or high is None or _octaves(pair):
             continue
-        low_db = _levels_db(fundamentals[pair.low], low, vowel)
-        high_db = _levels_db(fundamentals[pair.high], high, vowel)
+        low_db = levels_db(fundamentals[pair.low], low, vowel)
+        high_db = levels_db(fundamentals[pair.high], high, vowel)
         for shared in pair.shared:
             sides = (
                 (pair.low, shared.low_partial, float(low_db[shared.low_partial - 1])),
@@ -217,7 +217,7 @@ def _gain_db(voice: VoiceType, vowel: str, change: _Change, hz: float) -> float:
 
 
 @lru_cache(maxsize=256)
-def _levels_db(f0: float, voice: VoiceType, vowel: str) -> Floats:
+def levels_db(f0: float, voice: VoiceType, vowel: str) -> Floats:
     """Levels of a singer's partials in dB of their whole power: all sing equally loud."""
     amplitudes = spectrum(f0, formants(voice, vowel), _RD)
     levels: Floats = 20.0 * np.log10(amplitudes) - 10.0 * np.log10(np.sum(amplitudes**2))
