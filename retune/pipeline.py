@@ -23,6 +23,7 @@ if TYPE_CHECKING:
     from retune.adapters.disk import WriteReport
     from retune.choicesfile.direct import Directed
     from retune.choicesfile.model import ChoicesFile
+    from retune.choicesfile.update import Updated
     from retune.export.base import Output
     from retune.score.model import Score
     from retune.score.options import ReadOptions
@@ -61,18 +62,48 @@ def retuned(
         finding.
     """
 
-    def scored(options: ReadOptions) -> Score:
-        return (
-            read_bytes(source, name, options)
-            if isinstance(source, bytes)
-            else read(source, options)
-        )
-
+    scored = _reader(source, name)
     if file is not None:
         return _as_directed(directed(scored, reading, policy, file))
     score = scored(reading)
     policy = _in_key(policy, score)
     return tune(score, analyse(score, policy.tonic), policy)
+
+
+def proposed_choices(
+    source: Path | bytes, name: str, reading: ReadOptions, policy: Policy
+) -> tuple[TunedScore, str]:
+    """A score tuned without choices, and the text of the choices proposed for it."""
+    from retune.choicesfile.proposals import proposed
+
+    tuned = retuned(source, name, replace(reading, transpose=0), policy)
+    return tuned, proposed(tuned)
+
+
+def updated_choices(
+    source: Path | bytes, name: str, reading: ReadOptions, policy: Policy, file: ChoicesFile
+) -> tuple[TunedScore, Updated]:
+    """A score tuned with its choices, and their text brought up to date with it."""
+    from retune.choicesfile.update import updated
+
+    scored = _reader(source, name)
+    wish = directed(scored, reading, policy, file)
+    plain = scored(replace(reading, transpose=0))
+    return _as_directed(wish), updated(plain, wish)
+
+
+def write_text(path: Path, text: str) -> None:
+    """Write one text file whole; raises `OutputError`."""
+    from retune.adapters.onefile import write_one
+
+    write_one(path, text.encode())
+
+
+def _reader(source: Path | bytes, name: str) -> Callable[[ReadOptions], Score]:
+    """Reads one score with the given options."""
+    if isinstance(source, bytes):
+        return lambda options: read_bytes(source, name, options)
+    return lambda options: read(source, options)
 
 
 def _in_key(policy: Policy, score: Score) -> Policy:

@@ -48,6 +48,7 @@ DOORS = {
     "typst": {"adapters"},
     "matplotlib": {"adapters"},
     "watchfiles": {"adapters"},
+    "tomlkit": {"adapters"},
 }
 
 MODULES = sorted(ROOT.rglob("*.py"))

@@ -98,6 +98,11 @@ class _Reader:
                 self._mistake((name,), f"'{name}' stands in double brackets; write [[{name}]]")
             elif name not in PIECE:
                 self._mistake((name,), f"there is no '{name}'{_or(name, known)}")
+        tuning = document.get("tuning")
+        tuning = tuning if isinstance(tuning, dict) else {}
+        if "drift_within" in tuning and tuning.get("drift") != "within":
+            what = 'drift_within goes with drift = "within"'
+            self._mistake(("tuning", "drift_within"), what)
         own = {name: piece[name] for name in piece if name in PIECE}
         lines = {
             (name, key): self._position((name, key)).line

@@ -25,6 +25,7 @@ COMMANDS = {
     "show": "retune.cli.show",
     "tracks": "retune.cli.tracks",
     "export": "retune.cli.export",
+    "choices": "retune.cli.choices",
     "watch": "retune.cli.watch",
     "play": "retune.cli.play",
     "ports": "retune.cli.ports",

@@ -188,11 +188,21 @@ def _pedal(ground: Ground, onsets: list[Fraction], layout: Layout, pedal: PedalC
 def _ratios(
     score: Score, harmony: Harmony, layout: Layout, choices: Choices
 ) -> Iterator[tuple[int, Fraction]]:
-    """Pieces with a ratio of their own: those of the part's notes in the chord at the onset."""
+    """Pieces with a ratio of their own.
+
+    Those of the part's note at the onset, and of its same note again within the chord, which
+    could not stand elsewhere without being heard to move.
+    """
     onsets = [chord.onset for chord in harmony.chords]
     for choice in choices.ratios:
         here = _containing(onsets, choice.onset)
-        for piece in np.flatnonzero(here[layout.chord] & (layout.part == choice.part)).tolist():
-            note = score.notes[int(layout.note[piece])]
-            if note.analysed_onset <= choice.onset < note.analysed_end:
+        own = np.flatnonzero(here[layout.chord] & (layout.part == choice.part))
+        notes = [score.notes[int(layout.note[piece])] for piece in own.tolist()]
+        meant = {
+            note.pitch.key % 12
+            for note in notes
+            if note.analysed_onset <= choice.onset < note.analysed_end
+        }
+        for piece, note in zip(own.tolist(), notes, strict=True):
+            if note.pitch.key % 12 in meant:
                 yield piece, choice.ratio

@@ -18,6 +18,7 @@ from retune.tuning.intervals import Floats, Ints
 from retune.tuning.layout import Layout
 from retune.tuning.policy import Policy, Pull
 from retune.tuning.rows import (
+    PEDAL,
     absolute,
     anchor_weights,
     between,
@@ -101,6 +102,8 @@ def _constant_rows(problem: Problem, unknown: Ints) -> Iterator[Rows]:
     anchor = anchor_weights(layout, targets, ground)
     sung = np.flatnonzero(layout.tuned)
     yield absolute(unknown[sung], anchor[sung], targets.place[sung])
+    pedals = np.flatnonzero(ground.pedals & layout.tuned)
+    yield absolute(unknown[pedals], np.full(len(pedals), PEDAL), targets.level[pedals])
     yield _fixed_rows(problem, unknown)
     if ground.within.any():
         # The bound is measured from home; so that the first tonic chord is home, it stands there.

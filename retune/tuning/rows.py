@@ -32,7 +32,9 @@ _PAIRS_AT_ONCE = 400_000
 CHOIR = 4
 """Voices to which the weights of links and anchors were set."""
 _CENTRE = 100.0
-"""Weight of the place of a chord in which the pitch centre is set anew, and of a pedal."""
+"""Weight of the place of a chord in which the pitch centre is set anew."""
+PEDAL = 1e4
+"""Weight of the place of a pedal's own notes, which do not give way."""
 _DECIDED = 50.0
 """Times `Weights.chord` for pairs with a note whose ratio the director gave."""
 _WOLF = 1.0
@@ -159,7 +161,6 @@ def anchor_weights(layout: Layout, targets: Targets, ground: Ground) -> Floats:
     first = chord == chord[layout.tuned][:1]
     drawn[first] += ground.weights.start * layout.length[first]
     drawn[ground.centred[chord]] += _CENTRE
-    drawn[ground.pedals] += _CENTRE
     return drawn
 
 
