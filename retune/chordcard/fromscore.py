@@ -16,7 +16,7 @@ from retune.tuning.model import Segment, TunedNote, TunedScore
 from retune.tuning.ratios import AUGMENTED_SIXTH
 from retune.tuning.sounding import Row
 
-_PLACE = re.compile(r"\s*([^:\s]+)\s*(?::\s*(\d+)(?:\s+(\d+)/(\d+)|(\.\d+))?\s*)?")
+_PLACE = re.compile(r"\s*([^:\s]+)\s*(?::\s*(\d+)(?:\s+(\d+)/([1-9]\d*)|(\.\d+))?\s*)?")
 
 
 def tone_of(tuned: TunedScore, note: TunedNote, segment: Segment) -> Tone:
@@ -69,7 +69,7 @@ def onset_at(score: Score, place: str, run: int | None = None) -> Fraction:
         raise WishError(f"bar {match[1]} is not played {run} times", hint=f"It is played {times}")
     bar = found[(run or 1) - 1]
     beat = _first_beat(bar) if match[2] is None else Fraction(int(match[2]))
-    if match[3] and int(match[4]):
+    if match[3]:
         beat += Fraction(int(match[3]), int(match[4]))
     elif match[5]:
         beat += Fraction(match[5])

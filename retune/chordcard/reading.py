@@ -10,6 +10,7 @@ from __future__ import annotations
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 from fractions import Fraction
+from functools import cache
 from itertools import chain, combinations
 
 from retune.harmony.model import Chord, Degree, Quality
@@ -26,14 +27,14 @@ from retune.tuning.ratios import (
 )
 from retune.units import ratio_to_cents
 
-# What a reading costs (our choice). A chord with a stranger in it is still that chord, if
-# nothing else is: more strangers, or fewer than three tones of its own, make it none.
+# What a reading costs (our choice). A complete chord with a stranger in it is still that chord;
+# more strangers, or a tone missing besides, make it none.
 _STRANGER, _SPELLING = 3.0, 0.4
 _MISSING = {Degree.ROOT: 3.0, Degree.THIRD: 1.2, Degree.FIFTH: 0.4, Degree.SEVENTH: 2.0}
 _IN_BASS = {Degree.ROOT: 0.0, Degree.SEVENTH: 0.9}
 _OTHER_IN_BASS = 0.6
 _ADDED = {Degree.SIXTH: 0.5, Degree.NINTH: 0.4, Degree.FOURTH: 0.3, Degree.SECOND: 0.45}
-_MOST_STRANGERS, _LEAST_TONES = 1, 3
+_LEAST_TONES = 3
 _RARE = 0.01
 
 _IN_PLACE_OF_THIRD = (Degree.FOURTH, Degree.SECOND)
@@ -171,46 +172,47 @@ def _additions(quality: Quality) -> Iterator[tuple[Degree, ...]]:
     yield from every
 
 
+@cache
+def _members(quality: Quality, added: tuple[Degree, ...]) -> dict[int, tuple[Degree, int]]:
+    """The tones of a chord by their semitones above the root: which each is, and its place on
+    the line of fifths."""
+    template = with_added(templates(quality, 5)[0], added, 5)
+    return {
+        template.semitones[index]: (degree, template.spelled[index])
+        for index, degree in enumerate(DEGREES[: len(template.spelled)])
+        if (index < len(SPELLED[quality]) or degree in added)
+        and not (degree is Degree.THIRD and added and added[0] in _IN_PLACE_OF_THIRD)
+    }
+
+
 def _cost(
     pitches: Sequence[Pitch], root: PitchClass, quality: Quality, added: tuple[Degree, ...]
 ) -> tuple[float, Reading] | None:
     """What a reading costs; None where it explains too little."""
-    template = with_added(templates(quality, 5)[0], added, 5)
-    members = {
-        step: DEGREES[index]
-        for index, step in enumerate(template.semitones)
-        if index < len(SPELLED[quality]) or DEGREES[index] in added
+    members = _members(quality, added)
+    steps = [(pitch.key - root.chroma) % 12 for pitch in pitches]
+    degrees = tuple(members[step][0] if step in members else None for step in steps)
+    own = len(set(steps) & members.keys())
+    strangers = len(set(steps) - members.keys())
+    missing = {degree for degree, _ in members.values()} - set(degrees)
+    fewest = _LEAST_TONES if strangers or Degree.THIRD in missing or added else 2
+    if own < fewest or strangers + len(missing) > 1 or missing & set(added):
+        return None
+    misspelt = {
+        pitch.pitch_class
+        for pitch, step in zip(pitches, steps, strict=True)
+        if step in members and pitch.pitch_class.fifths - root.fifths != members[step][1]
     }
-    if added and added[0] in _IN_PLACE_OF_THIRD:
-        members = {s: d for s, d in members.items() if d is not Degree.THIRD}
-    degrees = tuple(members.get((pitch.key - root.chroma) % 12) for pitch in pitches)
-    chromas = {pitch.key % 12: degree for pitch, degree in zip(pitches, degrees, strict=True)}
-    strangers = sum(degree is None for degree in chromas.values())
-    present = {degree for degree in degrees if degree is not None}
-    own = len(chromas) - strangers
-    if strangers > _MOST_STRANGERS or (strangers and own < _LEAST_TONES):
-        return None
-    if any(degree not in present for degree in added):
-        return None
-    missing = set(members.values()) - present
-    if own < 2 or (own == 2 and Degree.THIRD not in present) or len(missing) > 1:
-        return None
-    sixth = False
-    cost = _STRANGER * strangers + sum(_MISSING.get(one, 0.0) for one in missing)
-    for pitch, degree in {p.pitch_class: d for p, d in zip(pitches, degrees, strict=True)}.items():
-        if degree is not None:
-            fifths = pitch.fifths - root.fifths
-            if (
-                quality is Quality.DOMINANT_SEVENTH
-                and degree is Degree.SEVENTH
-                and fifths == AUGMENTED_SIXTH
-            ):
-                sixth = True
-            elif fifths != template.spelled[DEGREES.index(degree)]:
-                cost += _SPELLING
+    sixth = {
+        pitch
+        for pitch in misspelt
+        if quality is Quality.DOMINANT_SEVENTH and pitch.fifths - root.fifths == AUGMENTED_SIXTH
+    }
+    cost = _STRANGER * strangers + _SPELLING * len(misspelt - sixth)
+    cost += sum(_MISSING.get(one, 0.0) for one in missing) + sum(_ADDED[one] for one in added)
     cost += _STRANGER if degrees[0] is None else _IN_BASS.get(degrees[0], _OTHER_IN_BASS)
-    cost += sum(_ADDED[one] for one in added) + _RARE * list(Quality).index(quality)
-    return cost, Reading(root, quality, added, degrees, sixth)
+    cost += _RARE * list(Quality).index(quality)
+    return cost, Reading(root, quality, added, degrees, bool(sixth))
 
 
 def _foundation(pitches: Sequence[Pitch], root: PitchClass | None) -> PitchClass:

@@ -119,7 +119,8 @@ def command(
     temperament and just, which partials meet, roughness, vowels that bring a shared partial
     out, other ratios for it, and other tones in the bass. A pitch without an octave is the
     next one above the one before it. Its root is where a piano has it, unless --tonic places it
-    in a just scale. `Just` is whatever the tuning in force makes of it.
+    in a just scale. Of the tuning's options, pitches alone take --prime-limit, --reference and
+    --tonic; the others go with --from.
     """
     _check_usage(ctx, bool(pitches), score, vowel_used=bool(audio or picture))
     if score is not None:

@@ -23,7 +23,7 @@ from retune.voice.beats import Pair
 from retune.voice.partials import HIGHEST_HZ, ordinal
 
 _PAIRS = 12
-_INTERVAL = 26
+_INTERVAL, _LONGEST = 26, 31
 _BEATS = 3
 _CLOSE_DB = 3.0
 
@@ -198,7 +198,11 @@ def _pairs(chord: FoundChord, columns: int) -> Iterator[str]:
 
 def _pair_words(chord: FoundChord, pair: Pair) -> str:
     size = chord.tones[pair.high].pitch.key - chord.tones[pair.low].pitch.key
-    return f"{interval_name(size)} {pair.ratio.numerator}:{pair.ratio.denominator}"
+    ratio = f"{pair.ratio.numerator}:{pair.ratio.denominator}"
+    name = interval_name(size)
+    if len(name) + len(ratio) >= _LONGEST:
+        name = f"{name[: _LONGEST - len(ratio) - 2]}…"
+    return f"{name} {ratio}"
 
 
 def _count_pairs(chord: FoundChord) -> int:
