@@ -12,12 +12,16 @@ from enum import StrEnum
 
 @dataclass(frozen=True, slots=True)
 class Place:
-    """Where in a score: file, part, printed bar number and beat, each where known."""
+    """Where in a score: file, part, printed bar number and beat, each where known.
+
+    `line` is that of a text file, such as a score's choices.
+    """
 
     file: str | None = None
     part: str | None = None
     bar: str | None = None
     beat: str | None = None
+    line: int | None = None
 
     def __str__(self) -> str:
         named = [f"bar {self.bar}"] if self.bar is not None else []
@@ -25,6 +29,8 @@ class Place:
             named.append(f"beat {self.beat}")
         if self.part is not None:
             named.insert(0, self.part)
+        if self.line is not None:
+            named.insert(0, f"line {self.line}")
         inside = ", ".join(named)
         if self.file is None:
             return inside

@@ -20,8 +20,8 @@ from enum import Enum
 from fractions import Fraction
 from itertools import pairwise
 
-from retune.choicesfile.moments import Moment, Sounding, moment_at
 from retune.score.model import Transposition
+from retune.score.moments import Moment, Sounding, moment_at
 
 Sounds = tuple[Sounding, ...]
 """What sounded before, at and after a place."""

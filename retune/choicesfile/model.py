@@ -60,4 +60,4 @@ class ChoicesFile:
 
     def place(self, line: int | None) -> Place:
         """A line of the file, for errors and findings."""
-        return Place(f"{self.path.name}, line {line}" if line else self.path.name)
+        return Place(self.path.name, line=line or None)

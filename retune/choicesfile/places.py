@@ -9,10 +9,10 @@ from fractions import Fraction
 from retune.choices import Span
 from retune.choicesfile.anchor import Anchor, Fit, Found, found_again, transposition_of
 from retune.choicesfile.model import ChoicesFile, Entry
-from retune.choicesfile.moments import Moment, moments_of
 from retune.errors import Finding, Weight, WishError
 from retune.score.excerpt import bar_range
 from retune.score.model import Bar, Score, Transposition
+from retune.score.moments import Moment, moments_of
 
 _BAR_START = Fraction(0)
 """As a beat: the first moment of a bar, whichever it is."""
@@ -188,7 +188,7 @@ def _told(score: Score, spot: Spot) -> tuple[Weight, str] | None:
 def stated(entry: Entry) -> str:
     """Where an entry says that it stands."""
     if "at" in entry.values:
-        from retune.choicesfile.moments import beat_text
+        from retune.score.moments import beat_text
 
         bar, beat = entry.values["at"]
         return f"{bar}:{beat_text(beat)}"

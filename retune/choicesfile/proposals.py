@@ -10,12 +10,12 @@ import json
 from collections.abc import Iterator, Sequence
 from fractions import Fraction
 
-from retune.choicesfile.moments import Moment, moments_of
 from retune.choicesfile.partnames import melodies
 from retune.choicesfile.schema import DECISIONS, PARTS, PIECE, PLAYING, TRACKS, TUNING, Table
 from retune.harmony.model import Chord
 from retune.harmony.symbols import chord_symbol, chord_words
 from retune.score.model import Score
+from retune.score.moments import Moment, moments_of
 from retune.tuning.model import TunedScore
 
 _RULE = "# " + "-" * 76

@@ -64,6 +64,9 @@ def print_findings(findings: Sequence[Finding], everything: bool = False) -> Non
 
 
 def _inside(place: Place) -> str:
+    """Of a place, what is not plain: the score's own name is."""
+    if place.line is not None:
+        return str(place).replace(": ", ", ")
     return str(Place(None, place.part, place.bar, place.beat))
 
 

@@ -89,6 +89,8 @@ def _json_text(tuned: TunedScore, chords: list[_Object], notes: list[_Object]) -
         yield f',\n "{key}": ['
         yield ",".join(f"\n  {_dumped(value)}" for value in values)
         yield "]"
+    if tuned.score.singer_notes:
+        yield f',\n "notes_to_singers": {_dumped(_told(tuned))}'
     yield f',\n "figures": {_dumped(plain(tuned.figures))}}}\n'
 
 
@@ -117,6 +119,26 @@ def _parts(tuned: TunedScore) -> list[_Object]:
     return [
         {"index": part.index, "name": part.name, "tuned": part.tuned} for part in tuned.score.parts
     ]
+
+
+def _told(tuned: TunedScore) -> list[_Object]:
+    """The director's notes to singers, as they come."""
+    score = tuned.score
+    found = []
+    for note in score.singer_notes:
+        inside = [bar.number for bar in score.bars if note.onset <= bar.onset < note.end]
+        first, last = (inside or [score.bar_at(note.onset).number])[0], inside[-1:]
+        bars = f"{first}-{last[0]}" if last and last[0] != first else first
+        found.append(
+            {
+                "bars": bars,
+                "onset": str(note.onset),
+                "end": str(note.end),
+                "parts": list(note.parts),
+                "text": note.text,
+            }
+        )
+    return found
 
 
 def _chord(tuned: TunedScore, places: Places, chord: Chord) -> _Object:

@@ -17,7 +17,7 @@ from string import Template
 from typing import Any
 
 _ASSETS = files("retune.page").joinpath("assets")
-_SCRIPTS = ("sound.js", "score.js", "card.js", "advice.js", "drift.js", "main.js")
+_SCRIPTS = ("sound.js", "score.js", "choose.js", "card.js", "advice.js", "drift.js", "main.js")
 
 LEGEND = (
     "Small numbers at the notes: cents by which the note lies above (+) or below (\u2212) where a "

@@ -13,6 +13,7 @@ from __future__ import annotations
 from collections.abc import Iterator, Mapping
 from typing import Any
 
+from retune.harmony.model import Quality
 from retune.page.cards import cards
 from retune.page.drift import drift_data
 from retune.page.rehearsal import MOST_NOTES, concerning, hard_places, hardest
@@ -60,7 +61,9 @@ def page_data(
         "bars": _bars(tuned),
         "notes": list(_notes(tuned, noteheads)),
         "chords": cards(tuned),
-        "advice": _advice(tuned),
+        "advice": [*_told(tuned), *_advice(tuned)],
+        "qualities": [str(one) for one in Quality],
+        "choices": f"{score.stem}.choices.toml",
         "start": _start(tuned),
         "drift": drift_data(tuned, follow),
     }
@@ -147,8 +150,28 @@ def _notes(tuned: TunedScore, noteheads: Mapping[str, str]) -> Iterator[dict[str
         yield row
 
 
+def _told(tuned: TunedScore) -> Iterator[dict[str, Any]]:
+    """The director's notes to singers, one for each text, at all its bars."""
+    score = tuned.score
+    everybody = {part.index for part in score.parts if part.tuned}
+    found: dict[tuple[str, tuple[int, ...]], list[list[Any]]] = {}
+    for note in score.singer_notes:
+        place = [score.bar_at(note.onset).number, _seconds(tuned.seconds(note.onset))]
+        found.setdefault((note.text, note.parts), []).append(place)
+    for (text, parts), places in found.items():
+        yield {
+            "kind": "director",
+            "who": [] if set(parts) >= everybody else list(parts),
+            "at": places,
+            "what": "from your director",
+            "text": text,
+            "listen": "",
+            "main": True,
+        }
+
+
 def _advice(tuned: TunedScore) -> list[dict[str, Any]]:
-    """What singers are told of single bars, in order: rehearsal notes so far.
+    """Rehearsal notes: what singers are told of the bars hardest to tune, in order.
 
     `kind` says who tells it, `who` are indices of parts, [] for all; `main` marks the hardest
     places of the piece, beside which each part has its own.

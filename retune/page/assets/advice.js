@@ -38,7 +38,7 @@ class AdviceView {
     const what = note.what ? element("span", { class: "what" }, alone ? note.what : ` \u00b7 ${note.what}`) : "";
     return element("li", {},
       element("div", { class: "places" }, ...places, element("span", {}, alone ? "" : element("strong", {}, who), what)),
-      element("p", {}, withSigns(note.text)),
+      element("p", {}, note.kind === "director" ? note.text : withSigns(note.text)),
       ...(note.listen ? [element("p", { class: "listen" }, withSigns(note.listen))] : []),
     );
   }

@@ -32,6 +32,7 @@ class Card {
   constructor(box, piece, player) {
     Object.assign(this, { box, piece, player });
     this.index = null;
+    this.chooser = new Chooser(piece, player);
     box.addEventListener("keydown", (event) => {
       if (event.key === "Escape") this.close();
     });
@@ -56,6 +57,7 @@ class Card {
       this.pairs(chord),
       ...this.whole(chord),
       ...this.hint(chord),
+      ...this.chooser.view(chord),
       this.steps(),
     );
     box.hidden = false;
@@ -70,6 +72,7 @@ class Card {
   }
 
   doubt(chord) {
+    if (chord.decided) return [element("p", { class: "doubt" }, "The director decided this chord.")];
     if (!chord.doubt) return [];
     const other = chord.other ? ` It may also be ${pretty(chord.other)}.` : "";
     return [element("p", { class: "doubt" }, `? The root is in doubt.${other}`)];
