@@ -61,3 +61,20 @@ def test_python_example_runs(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) ->
 def test_every_linked_file_exists() -> None:
     for name in re.findall(r"fixtures/[\w-]+\.\w+", README):
         assert (ROOT / name).is_file(), name
+
+
+def test_the_example_of_choices_holds_for_the_bundled_hymn() -> None:
+    from retune.choicesfile.read import loads
+    from retune.pipeline import retuned
+    from retune.score.options import ReadOptions
+    from retune.tuning.policy import Policy
+
+    text = README.partition("```toml\n")[2].partition("```")[0]
+    hymn = ROOT / "fixtures" / "harbour-hymn.musicxml"
+    file = loads(text, Path("harbour-hymn.choices.toml"))
+    tuned = retuned(hymn, str(hymn), ReadOptions(), Policy(), file)
+    assert tuned.score.title == "For the Blessing of the Nets"
+    lost = [f for f in (*tuned.score.findings, *tuned.findings) if f.where.line]
+    assert not lost
+    assert sum(chord.decided for chord in tuned.harmony.chords) == 1
+    assert any(str(s.ratio) == "7/4" for n in tuned.notes for s in n.segments)
