@@ -224,9 +224,11 @@ def _entries(view: View, part: int) -> Iterator[RehearsalNote]:
         note = tuned.notes[index].note
         bars = tuned.score.bar_at(note.onset).index - tuned.score.bar_at(end).index
         rest = tuned.seconds(note.onset) - tuned.seconds(end)
+        if rest < _REST_SECONDS or bars < _REST_BARS:
+            continue
         strayed = view.tonic_at(note.onset) - view.tonic_at(end)
         here = view.sung(index, tuned.notes[index].segments[0])
-        if rest < _REST_SECONDS or bars < _REST_BARS or abs(strayed) < _STRAYED or here is None:
+        if abs(strayed) < _STRAYED or here is None:
             continue
         since = "when this part last sang" if end else "at the beginning"
         text = (

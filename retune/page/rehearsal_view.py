@@ -72,7 +72,7 @@ class View:
 
     def tonic_at(self, onset: Fraction) -> float:
         """Cents at which the home tonic stands at a time."""
-        return [cents for start, cents in self._path if start <= onset][-1]
+        return self._path[bisect_right(self._path, onset, key=lambda point: point[0]) - 1][1]
 
     def sung(self, index: int, segment: Segment) -> Sung | None:
         """A stretch of a note, by the note's index; None where it is no just tone of its chord."""
