@@ -6,6 +6,7 @@ from collections.abc import Iterator
 from dataclasses import dataclass, replace
 from fractions import Fraction
 from functools import cache
+from math import lcm
 
 from retune.chordcard.found import FoundChord
 from retune.chordcard.model import proportion
@@ -45,7 +46,8 @@ class Sound:
 class Alternative:
     """Other ratios for the same chord.
 
-    `numbers` is the chord in whole numbers, () where it is tempered; `differs` holds the tones
+    `numbers` is the chord in whole numbers, its tones as near above the root as they may lie, ()
+    where it is tempered; `differs` holds the tones
     whose ratio is not that of the chord as it stands, with that ratio and its cents against the
     piano above the root; `chosen` marks the chord as it stands.
     """
@@ -103,7 +105,7 @@ def alternatives(chord: FoundChord) -> tuple[Alternative, ...]:
         if ratios in found:
             continue
         found[ratios] = Alternative(
-            _numbers(other),
+            _close_numbers(other),
             tuple(_differing(chord, other)),
             template.limit,
             ratios == here,
@@ -140,6 +142,20 @@ def _ratios(chord: FoundChord) -> tuple[Fraction | None, ...]:
 
 def _numbers(chord: FoundChord) -> tuple[int, ...]:
     return proportion([tone.sounding for tone in chord.tones]) or ()
+
+
+def _close_numbers(chord: FoundChord) -> tuple[int, ...]:
+    """The tones of the chord above its root within an octave, in whole numbers."""
+    ratios = {
+        tone.ratio
+        for tone, degree in zip(chord.tones, chord.reading.degrees, strict=True)
+        if degree is not None
+    }
+    if None in ratios:
+        return ()
+    each = sorted(ratio for ratio in ratios if ratio is not None)
+    common = lcm(*(ratio.denominator for ratio in each))
+    return tuple(int(ratio * common) for ratio in each)
 
 
 def _differing(

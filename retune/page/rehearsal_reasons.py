@@ -20,7 +20,7 @@ from retune.page.rehearsal_view import Sung, View
 from retune.score.model import Note
 from retune.score.ranges import RANGES
 from retune.tuning.model import TunedScore
-from retune.tuning.ratios import templates
+from retune.tuning.ratios import AUGMENTED_SIXTH, templates
 from retune.units import ratio_to_cents
 
 LEAST_SECONDS = 0.5
@@ -199,7 +199,9 @@ def _sevenths(view: View, part: int) -> Iterator[RehearsalNote]:
                 continue
             assert one.chord.quality is not None
             assert segment.ratio is not None
-            usual = templates(one.chord.quality, view.limit)[0].ratios
+            assert one.chord.root is not None
+            sixth = one.note.note.pitch.pitch_class.fifths - one.chord.root.fifths
+            usual = templates(one.chord.quality, view.limit, sixth == AUGMENTED_SIXTH)[0].ratios
             if usual is None or len(usual) < 4 or usual[3] == segment.ratio:
                 continue
             apart = ratio_to_cents(segment.ratio) - ratio_to_cents(usual[3])

@@ -162,6 +162,11 @@ def test_sevenths_that_a_dominant_may_have() -> None:
     assert found[0].sound.beating != ()
 
 
+def test_alternatives_are_named_in_close_position_whatever_is_doubled() -> None:
+    found = alternatives(chord("C2 C3 G3 E4 Bb4 C5 G5"))
+    assert [one.numbers for one in found] == [(20, 25, 30, 36), (36, 45, 54, 64), (4, 5, 6, 7)]
+
+
 def test_septimal_minor_is_an_alternative() -> None:
     """6:7:9 (methods.md B5) and its roughness on C4 (1c)."""
     here, other = alternatives(chord("C4 Eb4 G4"))

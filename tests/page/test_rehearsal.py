@@ -124,6 +124,13 @@ def test_doubtful_chord_tells_which_voice_the_other_reading_moves() -> None:
     assert "Part 2's B4 belongs to G7 alone." in plain.text
 
 
+def test_augmented_sixth_is_no_stray_seventh() -> None:
+    """A German sixth is 225/128 within limit 5 (handbook, methods.md B5): nothing was forced."""
+    voices: list[list[str | None]] = [["F#5"], ["Eb5"], ["C5"], ["Ab3"]]
+    kinds = {note.reason for note in places([("Ab", DOM)], voices)}
+    assert Reason.SEVENTH not in kinds
+
+
 def test_certain_chord_is_no_doubt() -> None:
     score, harmony = build([("G", DOM)], [["F5"], ["B4"], ["G4"], ["D4"]], quarters=2)
     kinds = {note.reason for note in tuned_places(score, harmony, Policy(prime_limit=7))}
