@@ -48,7 +48,6 @@ DOORS = {
     "typst": {"adapters"},
     "matplotlib": {"adapters"},
     "watchfiles": {"adapters"},
-    "tomlkit": {"adapters"},
 }
 
 MODULES = sorted(ROOT.rglob("*.py"))

@@ -28,6 +28,8 @@ _SKIPPED = re.compile(r"#[^\n]*")
 _BLANK = re.compile(r"(?:[ \t\r\n]|#[^\n]*)*")
 _KEY = re.compile(r"""(?:[A-Za-z0-9_-]+|"(?:\\.|[^"\\\n])*"|'[^'\n]*')""")
 _DOT = re.compile(r"[ \t]*\.[ \t]*")
+_SPACE = re.compile(r"[ \t]*")
+_VALUE = re.compile(r"[ \t]*=[ \t]*")
 
 
 @dataclass(frozen=True, slots=True)
@@ -41,6 +43,35 @@ class Position:
         return f"line {self.line}, column {self.column}"
 
 
+@dataclass(frozen=True, slots=True)
+class Statement:
+    """One header or one key with its value; offsets into the text.
+
+    `path` is the table that a header opens or that a key stands in, `keys` are empty for headers.
+    `value` and `end` bound the value, without the comment behind it; of a header, the header.
+    `line_end` is where its line ends.
+    """
+
+    path: Path
+    keys: tuple[str, ...]
+    start: int
+    value: int
+    end: int
+    line_end: int
+
+
+def statements(text: str) -> Iterator[Statement]:
+    """All statements of a valid text, in order."""
+    count: dict[Path, int] = {}
+    table: Path = ()
+    for start, header, keys, after_keys in _statements(text):
+        if header:
+            table = _open(count, keys, header == 2)
+        value = start if header else _VALUE.match(text, after_keys).end()  # type: ignore[union-attr]
+        end, line_end = _ends(text, after_keys + header if header else value)
+        yield Statement(table, () if header else tuple(keys), start, value, end, line_end)
+
+
 def positions(text: str) -> dict[Path, Position]:
     """The place of every table and of every key that begins a line of its own.
 
@@ -49,21 +80,13 @@ def positions(text: str) -> dict[Path, Position]:
     'line 5, column 1'
     """
     found: dict[Path, Position] = {}
-    count: dict[Path, int] = {}
-    table: Path = ()
-    for start, header, keys in _statements(text):
-        here = _position(text, start)
-        if header == 0:
-            _note(found, table, keys, here)
-            continue
-        table = _open(count, keys, header == 2)
-        found.setdefault(table, here)
+    for one in statements(text):
+        here = _position(text, one.start)
+        found.setdefault(one.path, here)
+        for length in range(1, len(one.keys) + 1):
+            found.setdefault((*one.path, *one.keys[:length]), here)
+    found.pop((), None)
     return found
-
-
-def _note(found: dict[Path, Position], table: Path, keys: list[str], here: Position) -> None:
-    for length in range(1, len(keys) + 1):
-        found.setdefault((*table, *keys[:length]), here)
 
 
 def _open(count: dict[Path, int], keys: list[str], array: bool) -> Path:
@@ -84,16 +107,16 @@ def _position(text: str, offset: int) -> Position:
     return Position(text.count("\n", 0, offset) + 1, offset - before)
 
 
-def _statements(text: str) -> Iterator[tuple[int, int, list[str]]]:
-    """Start, brackets of the header (0 for a key) and keys of every statement."""
+def _statements(text: str) -> Iterator[tuple[int, int, list[str], int]]:
+    """Start, brackets of the header (0 for a key), keys and their end, of every statement."""
     at = _end_of(_BLANK, text, 0)
     while at < len(text):
         start = at
         header = 2 if text.startswith("[[", at) else 1 if text[at] == "[" else 0
-        at = _end_of(re.compile(r"[ \t]*"), text, at + header)
+        at = _end_of(_SPACE, text, at + header)
         keys, at = _dotted(text, at)
-        yield start, header, keys
-        at = _end_of(_BLANK, text, _after(text, at + header))
+        yield start, header, keys, at
+        at = _end_of(_BLANK, text, _ends(text, at + header)[1])
 
 
 def _dotted(text: str, at: int) -> tuple[list[str], int]:
@@ -112,22 +135,24 @@ def _plain(key: str) -> str:
     return next(iter(tomllib.loads(f"{key} = 0"))) if key[:1] in "\"'" else key
 
 
-def _after(text: str, at: int) -> int:
-    """The end of a statement's line: the first line break outside strings and brackets."""
-    depth = 0
+def _ends(text: str, at: int) -> tuple[int, int]:
+    """Where a value ends, and its line: the first line break outside strings and brackets."""
+    depth, last = 0, at
     while at < len(text):
         sign = text[at]
-        if sign in "\"'":
-            at = _end_of(_STRING, text, at)
-            continue
+        if sign == "\n" and depth <= 0:
+            break
         if sign == "#":
             at = _end_of(_SKIPPED, text, at)
             continue
-        if sign == "\n" and depth <= 0:
-            return at
+        if sign in "\"'":
+            last = at = _end_of(_STRING, text, at)
+            continue
         depth += (sign in "[{") - (sign in "]}")
         at += 1
-    return at
+        if not sign.isspace():
+            last = at
+    return last, at
 
 
 def _end_of(pattern: re.Pattern[str], text: str, at: int) -> int:

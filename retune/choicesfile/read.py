@@ -48,7 +48,6 @@ def load(path: Path) -> ChoicesFile:
 
 def loads(text: str, path: Path) -> ChoicesFile:
     """Read the text of a choices file; raises as `load` does."""
-    text = text.replace("\r\n", "\n")
     try:
         document = tomllib.loads(text)
     except tomllib.TOMLDecodeError as error:

@@ -6,9 +6,9 @@ from collections.abc import Iterator
 from dataclasses import dataclass
 from typing import Any
 
-from retune.adapters.toml_editing import EditedToml
 from retune.choicesfile.anchor import Fit
 from retune.choicesfile.direct import Directed
+from retune.choicesfile.edit import EditedToml
 from retune.choicesfile.partnames import melodies
 from retune.choicesfile.places import Spot, now
 from retune.score.model import Score
@@ -44,10 +44,10 @@ def updated(plain: Score, wish: Directed) -> Updated:
         if spot.fit is not Fit.GONE:
             values = dict(_values(wish, spot))
             changed += bool(values)
-            edited.set_in_array(spot.entry.table, spot.entry.index, values)
+            edited.set_values((spot.entry.table, spot.entry.index), values)
     tonic = file.section("tuning").get("tonic")
     if tonic is not None and wish.survey.moved.semitones:
-        edited.set_in_table(("tuning",), {"tonic": moved(tonic, wish.survey.moved).name})
+        edited.set_values(("tuning",), {"tonic": moved(tonic, wish.survey.moved).name})
     _names(edited, plain, wish)
     return Updated(edited.text, changed)
 
@@ -87,15 +87,11 @@ def _names(edited: EditedToml, plain: Score, wish: Directed) -> None:
         names = section.get(key, ())
         if any(name in renamed for name in names):
             values = [renamed.get(name, name) for name in names]
-            edited.set_in_table(("parts",), {key: values})
+            edited.set_values(("parts",), {key: values})
     if section.get("melody") in renamed:
-        edited.set_in_table(("parts",), {"melody": renamed[section["melody"]]})
-    for old in section.get("names", {}):
-        if old in renamed:
-            edited.drop(("parts", "names"), old)
-            edited.set_in_table(("parts", "names"), {renamed[old]: section["names"][old]})
-    for old in section.get("begins", {}):
-        if old in renamed:
-            edited.drop(("parts", "begins"), old)
+        edited.set_values(("parts",), {"melody": renamed[section["melody"]]})
+    new = section.get("names", {})
+    if any(old in renamed for old in new):
+        edited.set_table(("parts", "names"), {renamed.get(k, k): v for k, v in new.items()})
     lines = {n: " ".join(p.name for p in line) for n, line in melodies(plain).items() if line}
-    edited.set_in_table(("parts", "begins"), lines)
+    edited.set_table(("parts", "begins"), lines)

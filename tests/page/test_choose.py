@@ -60,7 +60,8 @@ def test_a_ratio_chosen_on_the_card_is_heard_and_read(hymn: Page) -> None:
     _open(hymn, "12", "3")
     before = hymn.evaluate("rehearsal.piece.chords[rehearsal.card.index].tones.map((t) => t.hz)")
     hymn.evaluate(
-        "rehearsal.player.hold = (tones) => { if (tones) globalThis.held = tones.map((t) => t.hz); }"
+        "rehearsal.player.hold = (tones) =>"
+        " { if (tones) globalThis.held = tones.map((t) => t.hz); }"
     )
     options = hymn.locator("#chooseratio option").all_inner_texts()
     (wanted,) = [one for one in options if one.startswith("Bass") and one.endswith("7/4")]

@@ -359,7 +359,7 @@ def test_the_page_of_a_part_has_it_chosen(browser: Browser, folder: Path) -> Non
     page.check("#ownline")
     until(page, "rehearsal.shown === 'part2'")
     own = sum(1 for n in tuned("harbour-hymn").score.notes if n.part == 2)
-    assert page.evaluate("rehearsal.view.heads.size") == own
+    until(page, f"rehearsal.view.heads.size === {own}")
     assert page.faults == []  # type: ignore[attr-defined]
     page.context.close()
 
