@@ -138,7 +138,7 @@ class _Reader:
         read = {}
         for key, value in values.items():
             if key not in table:
-                inside = f" in [{path[0]}]" if path else ""
+                inside = f" in {_brackets(path)}" if path else ""
                 self._mistake((*path, key), f"there is no '{key}'{inside}{_or(key, table)}")
                 continue
             try:
@@ -159,6 +159,11 @@ class _Reader:
 _PLACING = frozenset({"at", "bars", "pass", "sounds", "ends", "beats"})
 _DECIDING = ("chord", "passage")
 """Tables that say nothing by their place alone."""
+
+
+def _brackets(path: KeyPath) -> str:
+    """A table as its header has it."""
+    return f"[[{path[0]}]]" if path[0] in DECISIONS else f"[{path[0]}]"
 
 
 def _is_table(value: Any) -> bool:
