@@ -177,7 +177,7 @@ def _told(score: Score, spot: Spot) -> tuple[Weight, str] | None:
     if spot.entry.get("sounds") is None:
         numbers = [bar.number for bar in score.bars]
         there = f"; there are bars {numbers[0]} to {numbers[-1]}" if numbers else ""
-        return Weight.LOSS, f"{what} has no place: no {stated(spot.entry)}{there}"
+        return Weight.LOSS, f"{what} has no place: no note at {stated(spot.entry)}{there}"
     near = ""
     if spot.first is not None:
         sounding = " ".join(pitch.name for pitch in spot.first.here)

@@ -2,8 +2,9 @@
 
 Conventions
 -----------
-* A moment begins wherever a note of the voices begins, and stands in a bar as written; of a bar
-  that is repeated the first time through counts. Grace notes begin none.
+* A moment begins wherever a note of the voices begins, in bars where none does wherever one of
+  the accompaniment does, and stands in a bar as written; of a bar that is repeated the first
+  time through counts. Grace notes begin none.
 * `here` holds the sounding pitches from the lowest up, each once; `before` and `after` those of
   the neighbouring moments, empty at the ends and in silence.
 """
@@ -65,9 +66,15 @@ def beat_text(beat: Fraction) -> str:
 def moments_of(score: Score) -> tuple[Moment, ...]:
     """All moments of a score in the order of its bars as written."""
     voices = {part.index for part in score.parts if part.kind is PartKind.VOICE}
-    notes = [n for n in score.notes if not n.grace and (n.part in voices or not voices)]
-    onsets = sorted({note.onset for note in notes})
-    sounding = _sounding(onsets, [(n.onset, n.analysed_end, n.pitch) for n in notes])
+    sung = [n for n in score.notes if not n.grace and n.part in voices]
+    own = {score.bar_at(n.onset).index for n in sung}
+    spans = [(n.onset, n.analysed_end, n.pitch) for n in sung]
+    for note in score.notes:
+        bar = score.bar_at(note.onset)
+        if not note.grace and note.part not in voices and bar.index not in own:
+            spans.append((note.onset, min(note.analysed_end, bar.end), note.pitch))
+    onsets = sorted({onset for onset, _, _ in spans})
+    sounding = _sounding(onsets, spans)
     silent: Sounding = ()
     around = [silent, *sounding, silent]
     first: dict[int, Bar] = {}

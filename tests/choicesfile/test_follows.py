@@ -222,6 +222,19 @@ def test_a_place_that_is_not_there_is_told() -> None:
     assert "bars 1 to 26" in told.what
 
 
+def test_bars_in_which_the_organ_plays_alone_have_their_places() -> None:
+    path = HYMN.with_name("lamp-night.musicxml")
+    text = '[[tempo]]\nat = "2:1"\nbeats = 30\n[[note_to_singers]]\nbars = "1-2"\ntext = "Wait."'
+    tuned = tuned_with(path, text)
+    assert not lost(tuned)
+    bar = next(b for b in tuned.score.bars if b.number == "2")
+    voices = {p.index for p in tuned.score.parts if p.tuned}
+    assert not [n for n in tuned.score.notes if n.part in voices and n.onset < bar.end]
+    beat = tuned.seconds(bar.onset + bar.counted_beat) - tuned.seconds(bar.onset)
+    assert beat == pytest.approx(2.0)
+    assert [note.text for note in tuned.score.singer_notes] == ["Wait."]
+
+
 def test_a_part_that_is_not_there_is_told_with_a_guess() -> None:
     tuned = tuned_with(HYMN, '[parts]\naccompaniment = ["Tenro"]')
     (told,) = lost(tuned)
